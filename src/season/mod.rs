@@ -1,0 +1,10 @@
+//! A season as finished values: what happens to a subject between two dates, and the path it draws.
+//!
+//! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
+
+mod types;
+
+pub use types::{
+    Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing,
+    TrackPoint,
+};
