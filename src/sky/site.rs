@@ -21,3 +21,18 @@ pub struct Site {
     /// Extinction in the V band, magnitudes per airmass.
     pub extinction_mag: f64,
 }
+
+impl Site {
+    /// Distance from the Earth's axis and from the equator's plane, au (WGS84: 6378.137 km, 1/298.257223563).
+    #[must_use]
+    pub fn geocentric_au(&self) -> (f64, f64) {
+        const EQUATORIAL_M: f64 = 6_378_137.0;
+        const FLATTENING: f64 = 1.0 / 298.257_223_563;
+        let (sin, cos) = self.latitude.sin_cos();
+        let squash = (1.0 - FLATTENING) * (1.0 - FLATTENING);
+        let c = 1.0 / (cos * cos + squash * sin * sin).sqrt();
+        let axial = (EQUATORIAL_M * c + self.elevation_m) * cos;
+        let polar = (EQUATORIAL_M * c * squash + self.elevation_m) * sin;
+        (axial / super::place::AU_M, polar / super::place::AU_M)
+    }
+}
