@@ -2,9 +2,18 @@
 //!
 //! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
 
+mod compute;
+mod constellation_walk;
+pub mod events;
+pub mod horizon;
+mod loops;
+mod search;
+mod track;
 mod types;
 
+pub use compute::{next_season, season};
+pub use loops::{loops, synodic_days};
+pub use track::{strip_frame, track, track_step_days};
 pub use types::{
-    Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing,
-    TrackPoint,
+    Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing, TrackPoint,
 };

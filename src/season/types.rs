@@ -61,7 +61,7 @@ pub enum EventKind {
     GreatestBrightness,
     /// Minimum of the distance from the Sun's centre.
     Perihelion,
-    /// The apparent place passes into a constellation.
+    /// The astrometric place passes into a constellation (the boundaries stand among the stars).
     ConstellationEntry,
     /// Minimum of the angle to another planet, a bright star or the Moon.
     CloseApproach,

@@ -324,7 +324,7 @@ impl Vantage<'_> {
             geometric_rate,
             astrometric,
             direction,
-            direction_rate,
+            astrometric_rate,
             distance_au: distance,
             heliocentric,
             heliocentric_now: state.position - self.sun.position,
@@ -511,8 +511,8 @@ pub struct Place {
     pub astrometric: Vec3,
     /// Unit vector of `astrometric`: the astrometric place.
     pub direction: Vec3,
-    /// Rate of `direction`, radians a day.
-    pub direction_rate: Vec3,
+    /// Rate of `astrometric`, au a day of TT.
+    pub astrometric_rate: Vec3,
     /// Length of `astrometric`: the light-time distance.
     pub distance_au: f64,
     /// From the Sun to the body, both when the light left it; au, ICRS axes.
@@ -553,6 +553,12 @@ impl Place {
     #[must_use]
     pub fn ecliptic_j2000(&self) -> Spherical {
         Spherical::of(ReferenceFrame::j2000().ecliptic_from_icrs * self.direction)
+    }
+
+    /// Rate of [`Place::distance_au`], au a day.
+    #[must_use]
+    pub fn distance_rate(&self) -> f64 {
+        self.direction.dot(self.astrometric_rate)
     }
 
     /// Rates of [`Place::equatorial_of_date`], the turning of the axes included.
