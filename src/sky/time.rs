@@ -71,6 +71,44 @@ scale! {
     /// Barycentric Dynamical Time: the argument of the ephemeris. Differs from TT by less than 2 ms.
     Tdb
 }
+/// TDB-TT in seconds at `centuries` since J2000 of either scale.
+///
+/// Fairhead and Bretagnon 1990 (Astron. Astrophys. 229:240) in the seven-term form of USNO Circular 179, equation 2.6:
+/// good to 10 microseconds from 1600 to 2200, and within a millisecond over the years -2000 to 3000.
+fn tdb_minus_tt_seconds(centuries: f64) -> f64 {
+    const TERMS: [(f64, f64, f64); 6] = [
+        (0.001_657, 628.3076, 6.2401),
+        (0.000_022, 575.3385, 4.2970),
+        (0.000_014, 1256.6152, 6.1969),
+        (0.000_005, 606.9777, 4.0212),
+        (0.000_005, 52.9691, 0.4444),
+        (0.000_002, 21.3299, 5.5431),
+    ];
+    let steady: f64 = TERMS
+        .iter()
+        .map(|(amplitude, rate, phase)| amplitude * libm::sin(rate * centuries + phase))
+        .sum();
+    steady + 0.000_010 * centuries * libm::sin(628.3076 * centuries + 4.2490)
+}
+
+impl Tdb {
+    /// The same instant, from TT; by Fairhead and Bretagnon 1990 in the short form of USNO
+    /// Circular 179: good to 10 microseconds from 1600 to 2200, to a millisecond from -2000 to 3000.
+    #[must_use]
+    pub fn from_tt(tt: Tt) -> Tdb {
+        Tdb(tt.0).plus_seconds(tdb_minus_tt_seconds(tt.centuries()))
+    }
+}
+
+impl Tt {
+    /// The same instant, from TDB, to the accuracy of [`Tdb::from_tt`].
+    #[must_use]
+    pub fn from_tdb(tdb: Tdb) -> Tt {
+        // TDB for TT in the argument changes the result by less than a picosecond.
+        Tt(tdb.0).plus_seconds(-tdb_minus_tt_seconds(tdb.centuries()))
+    }
+}
+
 scale! {
     /// Universal Time 1: the angle through which the Earth has turned.
     Ut1
