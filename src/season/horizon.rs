@@ -25,7 +25,8 @@ pub enum Threshold {
 
 impl Threshold {
     /// The unrefracted altitude of the centre at which the body stands on the threshold.
-    fn altitude_of(self, place: &Place) -> Angle {
+    #[must_use]
+    pub fn altitude_of(self, place: &Place) -> Angle {
         match (self, place.body) {
             (Threshold::Altitude(altitude), _) => altitude,
             (Threshold::RiseSet, Body::Sun) => Angle::from_degrees(-50.0 / 60.0),
@@ -54,14 +55,6 @@ pub struct Transit {
     pub instant: Tt,
     /// Unrefracted.
     pub altitude: Angle,
-}
-
-/// The 24 hours from local mean noon to the next that are named by the civil date on which they begin: the noon is
-/// 12h - longitude/15 of UTC on that date. `noon_days` is that instant in days of UTC since J2000.
-#[must_use]
-pub fn local_mean_noon_utc_days(julian_day_number: f64, longitude: Angle) -> f64 {
-    // A Julian day begins at noon of its date.
-    julian_day_number - crate::sky::time::J2000_JD - longitude.signed().degrees() / 360.0
 }
 
 /// Every passage of a body through a threshold within the span, in order of time.
@@ -159,4 +152,120 @@ pub fn transits(sky: &Sky, site: &Site, body: Body, span: Span) -> Result<Vec<Tr
         before = here;
     }
     Ok(transits)
+}
+
+/// What happens to a body at a site in the course of a day.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum HorizonKind {
+    Rise,
+    UpperTransit,
+    Set,
+    CivilDusk,
+    NauticalDusk,
+    AstronomicalDusk,
+    AstronomicalDawn,
+    NauticalDawn,
+    CivilDawn,
+}
+
+impl HorizonKind {
+    pub const ALL: [HorizonKind; 9] = [
+        HorizonKind::Rise,
+        HorizonKind::UpperTransit,
+        HorizonKind::Set,
+        HorizonKind::CivilDusk,
+        HorizonKind::NauticalDusk,
+        HorizonKind::AstronomicalDusk,
+        HorizonKind::AstronomicalDawn,
+        HorizonKind::NauticalDawn,
+        HorizonKind::CivilDawn,
+    ];
+
+    /// The word used in tables and on the command line.
+    #[must_use]
+    pub const fn word(self) -> &'static str {
+        match self {
+            HorizonKind::Rise => "rise",
+            HorizonKind::UpperTransit => "upper_transit",
+            HorizonKind::Set => "set",
+            HorizonKind::CivilDusk => "civil_dusk",
+            HorizonKind::NauticalDusk => "nautical_dusk",
+            HorizonKind::AstronomicalDusk => "astronomical_dusk",
+            HorizonKind::AstronomicalDawn => "astronomical_dawn",
+            HorizonKind::NauticalDawn => "nautical_dawn",
+            HorizonKind::CivilDawn => "civil_dawn",
+        }
+    }
+
+    /// Dusks and dawns are the Sun's alone.
+    #[must_use]
+    pub const fn is_twilight(self) -> bool {
+        !matches!(self, HorizonKind::Rise | HorizonKind::UpperTransit | HorizonKind::Set)
+    }
+
+    /// Threshold and sense of a passage; a transit has none.
+    const fn passage(self) -> Option<(Threshold, bool)> {
+        let twilight = |degrees: f64| Threshold::Altitude(Angle::from_degrees(degrees));
+        match self {
+            HorizonKind::Rise => Some((Threshold::RiseSet, true)),
+            HorizonKind::Set => Some((Threshold::RiseSet, false)),
+            HorizonKind::UpperTransit => None,
+            HorizonKind::CivilDusk => Some((twilight(-6.0), false)),
+            HorizonKind::NauticalDusk => Some((twilight(-12.0), false)),
+            HorizonKind::AstronomicalDusk => Some((twilight(-18.0), false)),
+            HorizonKind::AstronomicalDawn => Some((twilight(-18.0), true)),
+            HorizonKind::NauticalDawn => Some((twilight(-12.0), true)),
+            HorizonKind::CivilDawn => Some((twilight(-6.0), true)),
+        }
+    }
+}
+
+/// A rising, transit, setting, dusk or dawn.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct HorizonEvent {
+    pub body: Body,
+    pub kind: HorizonKind,
+    pub instant: Tt,
+    /// Azimuth of a passage; unrefracted altitude of a transit.
+    pub value: Angle,
+}
+
+/// All events of the kinds asked for within the span, in order of time. Twilights of a body other than the Sun do not exist.
+///
+/// # Errors
+/// A span that the sky does not cover.
+pub fn horizon_events(
+    sky: &Sky,
+    site: &Site,
+    body: Body,
+    kinds: &[HorizonKind],
+    span: Span,
+) -> Result<Vec<HorizonEvent>, SkyError> {
+    let mut found = Vec::new();
+    let kinds = kinds.iter().copied().filter(|kind| body == Body::Sun || !kind.is_twilight());
+    let mut thresholds: Vec<(Threshold, Vec<(HorizonKind, bool)>)> = Vec::new();
+    for kind in kinds {
+        match kind.passage() {
+            None => found.extend(transits(sky, site, body, span)?.into_iter().map(|transit| HorizonEvent {
+                body,
+                kind,
+                instant: transit.instant,
+                value: transit.altitude,
+            })),
+            // Rise and set, dusk and dawn share the search for their threshold.
+            Some((threshold, upward)) => match thresholds.iter_mut().find(|(known, _)| *known == threshold) {
+                Some((_, kinds)) => kinds.push((kind, upward)),
+                None => thresholds.push((threshold, vec![(kind, upward)])),
+            },
+        }
+    }
+    for (threshold, kinds) in thresholds {
+        for crossing in altitude_crossings(sky, site, body, threshold, span)? {
+            found.extend(kinds.iter().filter(|(_, upward)| *upward == crossing.upward).map(|&(kind, _)| {
+                HorizonEvent { body, kind, instant: crossing.instant, value: crossing.azimuth }
+            }));
+        }
+    }
+    found.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()));
+    Ok(found)
 }

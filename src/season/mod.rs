@@ -4,9 +4,11 @@
 
 mod compute;
 mod constellation_walk;
+pub mod close;
 pub mod events;
 pub mod horizon;
 mod loops;
+pub mod outlook;
 mod search;
 mod track;
 mod types;

@@ -1,1 +1,3 @@
-//! To come.
+//! What is handed out: charts and tables as files.
+
+pub mod table;

@@ -133,6 +133,14 @@ impl Sky {
         }
     }
 
+    /// Whether an instant lies within the source.
+    #[must_use]
+    pub fn covers(&self, instant: Tt) -> bool {
+        let (from, to) = self.span();
+        let tdb = Tdb::from_tt(instant);
+        from <= tdb && tdb < to
+    }
+
     fn outside(&self, instant: Tdb) -> SkyError {
         let source_name = match self.source {
             Source::De440(_) => "DE440, 1550 to 2650",
@@ -166,7 +174,7 @@ impl Sky {
     /// # Errors
     /// An instant outside the source.
     pub fn frame_of_date(&self, instant: Tt) -> Result<ReferenceFrame, SkyError> {
-        let nutation = self.nutation(instant.to_tdb())?;
+        let nutation = self.nutation(Tdb::from_tt(instant))?;
         Ok(ReferenceFrame::of_date(instant, nutation, self.precession()))
     }
 
@@ -175,7 +183,7 @@ impl Sky {
     /// # Errors
     /// An instant outside the source.
     pub fn geocentre(&self, instant: Tt) -> Result<Vantage<'_>, SkyError> {
-        let tdb = instant.to_tdb();
+        let tdb = Tdb::from_tt(instant);
         let frame = self.frame_of_date(instant)?;
         let sun = self.state(Target::Sun, tdb)?;
         let barycentre = self.state(Target::EarthMoonBarycentre, tdb)?;
@@ -305,9 +313,6 @@ impl Vantage<'_> {
         let light_time_rate = direction.dot(velocity_then - self.observer.velocity)
             / (LIGHT_AU_PER_DAY + direction.dot(velocity_then));
         let astrometric_rate = velocity_then * (1.0 - light_time_rate) - self.observer.velocity;
-        let direction_rate =
-            (astrometric_rate - direction * direction.dot(astrometric_rate)) * (1.0 / distance);
-
         let sun_then = self.sun.position - self.sun.velocity * light_time;
         let heliocentric = astrometric + self.observer.position - sun_then;
         let deflected = match body {
@@ -315,8 +320,7 @@ impl Vantage<'_> {
             _ => deflect(direction, heliocentric, self.observer.position - self.sun.position),
         };
         let apparent = self.aberrate(deflected);
-        let apparent_rate = self.aberration_rate(direction, direction_rate);
-        Ok(Place {
+        let mut place = Place {
             body,
             instant: self.instant,
             emission: self.tdb.plus_days(-light_time),
@@ -330,10 +334,12 @@ impl Vantage<'_> {
             heliocentric_now: state.position - self.sun.position,
             heliocentric_velocity_now: state.velocity - self.sun.velocity,
             apparent,
-            apparent_rate,
+            apparent_rate: Vec3::ZERO,
             frame: self.frame,
             cautions: self.sky.cautions(),
-        })
+        };
+        place.apparent_rate = self.aberration_rate(direction, place.direction_rate());
+        Ok(place)
     }
 
     /// The apparent direction, on ICRS axes, of something infinitely far in the (astrometric) direction given.
@@ -553,6 +559,13 @@ impl Place {
     #[must_use]
     pub fn ecliptic_j2000(&self) -> Spherical {
         Spherical::of(ReferenceFrame::j2000().ecliptic_from_icrs * self.direction)
+    }
+
+    /// Rate of [`Place::direction`], radians a day.
+    #[must_use]
+    pub fn direction_rate(&self) -> Vec3 {
+        let across = self.astrometric_rate - self.direction * self.direction.dot(self.astrometric_rate);
+        across * (1.0 / self.distance_au)
     }
 
     /// Rate of [`Place::distance_au`], au a day.
