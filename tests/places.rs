@@ -45,7 +45,7 @@ fn geocentric_places_agree_with_de440() {
         let relative = |ours: f64, column: &str| (ours / row.number(column) - 1.0).abs();
         assert!(relative(place.distance_au, "dist_au") < DISTANCE_RELATIVE, "{body}");
         assert!(relative(place.geometric_distance_au(), "geo_dist_au") < DISTANCE_RELATIVE, "{body}");
-        let diameter = equatorial_diameter(body, place.distance_au).arcsec();
+        let diameter = equatorial_diameter(&place.geometry()).arcsec();
         assert!((diameter - row.number("angdiam_arcsec")).abs() < 1e-3, "{body} {diameter}");
         if body != Body::Sun {
             let geometry = place.geometry();

@@ -217,7 +217,7 @@ fn row(sky: &Sky, vantage: &Vantage<'_>, site: Option<&Site>, body: Body) -> Res
         Cell::Number(elongation.degrees(), 7),
         Cell::number(unless_sun(geometry.phase_angle().degrees()), 7),
         Cell::number(unless_sun(geometry.lit_fraction()), 7),
-        Cell::Number(equatorial_diameter(body, place.distance_au).arcsec(), 5),
+        Cell::Number(equatorial_diameter(&geometry).arcsec(), 5),
         Cell::Number(light.value, 3),
         Cell::text(Constellation::at_icrs(place.direction).abbreviation()),
         Cell::number(seen.map(|seen| seen.altitude.degrees()), 7),

@@ -251,7 +251,7 @@ impl Follower<'_> {
                 (!falling).then_some((K::Perihelion, value))
             }, found)?;
         if let Some(walk) = &mut self.walker {
-            walk.advance(self.sky, self.body, b.days, found)?;
+            walk.advance(self.sky, self.body, a.days, b.days, found)?;
         }
         Ok(())
     }

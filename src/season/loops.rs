@@ -7,7 +7,7 @@ use super::events::{Kinds, events};
 use super::search::minimum;
 use super::types::{Event, EventKind, EventValue, Loop, Span, TrackCrossing};
 use crate::sky::light::{MarsTerms, magnitude};
-use crate::sky::physical::equatorial_diameter;
+use crate::sky::physical::semidiameter;
 use crate::sky::place::{Place, Sky, SkyError};
 use crate::sky::{Body, Tt, Vec3};
 
@@ -88,7 +88,7 @@ fn one_loop(sky: &Sky, start: &Event, end: &Event, events: &[Event]) -> Result<L
             .filter(|event| (event.instant.days() - centre).abs() < LONGEST_RETROGRADE_DAYS / 2.0)
     };
     let largest_diameter = match nearest(EventKind::ClosestApproachLightTime).map(|event| event.value) {
-        Some(EventValue::DistanceAu(distance)) => Some(equatorial_diameter(start.body, distance)),
+        Some(EventValue::DistanceAu(distance)) => Some(semidiameter(start.body, distance) * 2.0),
         _ => None,
     };
     Ok(Loop {
