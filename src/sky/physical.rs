@@ -98,15 +98,14 @@ pub struct SubLatitudes {
     pub sun: Angle,
 }
 
-/// Planetographic latitudes under observer and Sun, north positive (for Mars and Jupiter the almanac's DE and DS).
-/// Zero for the Moon, whose pole is not modelled here.
+/// Planetographic latitudes under observer and Sun, north positive. Zero for the Moon, whose pole is not modelled here.
 #[must_use]
 pub fn planetographic_latitudes(geometry: &Geometry) -> SubLatitudes {
     let axis_ratio = polar_radius_km(geometry.body) / geometry.body.radius_km();
     sub_latitudes(geometry, axis_ratio * axis_ratio)
 }
 
-/// Planetocentric latitudes under observer and Sun, north positive. Zero for the Moon.
+/// Planetocentric latitudes under observer and Sun, north positive: DE and DS of Mars and Jupiter. Zero for the Moon.
 #[must_use]
 pub fn planetocentric_latitudes(geometry: &Geometry) -> SubLatitudes {
     sub_latitudes(geometry, 1.0)
