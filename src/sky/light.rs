@@ -131,12 +131,11 @@ fn polynomial<const N: usize>(coefficients: [f64; N], x: f64) -> f64 {
 /// Phase law of Krisciunas and Schaefer 1991, scaled from the mean distance of 384 400 km. Flagged beyond 150 degrees,
 /// where the measurements behind it end (from memory). It leaves out the surge within a few degrees of full.
 fn moon(phase_deg: f64) -> Flagged<f64> {
-    const MEAN_DISTANCE_AU: f64 = 384_400.0 / AU_KM;
-    // 5 log10 of the mean distance: what brings the law to 1 au.
-    let to_one_au = 5.0 * libm::log10(MEAN_DISTANCE_AU);
+    /// 5 log10 of that distance in au: what brings the law to 1 au.
+    const MEAN_DISTANCE_MAG: f64 = -12.950_710_165_245_855;
     let square = phase_deg * phase_deg;
     flagged_outside(
-        -12.73 + 0.026 * phase_deg + 4e-9 * square * square - to_one_au,
+        -12.73 + 0.026 * phase_deg + 4e-9 * square * square - MEAN_DISTANCE_MAG,
         phase_deg > 150.0,
     )
 }
@@ -382,6 +381,12 @@ mod tests {
         assert!(with_rings.cautions.is_empty());
         let globe = saturn_globe_beyond(169.8958);
         check(globe, 9.026035315474, 10.1321497654765, 5.206);
+    }
+
+    #[test]
+    fn mean_distance_of_the_moon_is_what_its_constant_says() {
+        let full_moon_at_mean_distance = moon(0.0).value + 5.0 * libm::log10(384_400.0 / AU_KM);
+        assert!((full_moon_at_mean_distance + 12.73).abs() < 1e-12);
     }
 
     #[test]
