@@ -2,8 +2,10 @@
 //!
 //! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
 
+mod conditions;
 mod types;
 
+pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 pub use types::{
     Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing,
     TrackPoint,
