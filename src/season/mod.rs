@@ -3,6 +3,7 @@
 //! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
 
 mod compute;
+mod conditions;
 mod constellation_walk;
 pub mod close;
 pub mod events;
@@ -13,6 +14,7 @@ mod search;
 mod track;
 mod types;
 
+pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 pub use compute::{next_season, season};
 pub use loops::{loops, synodic_days};
 pub use track::{strip_frame, track, track_step_days};
