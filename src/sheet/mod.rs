@@ -1,1 +1,7 @@
-//! To come.
+//! What is handed out: a scene as SVG or PNG. Every output draws the scene's own shapes; none measures or places.
+
+mod png;
+mod svg;
+
+pub use png::{PngError, png};
+pub use svg::svg;
