@@ -156,11 +156,11 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
 
 /// Named stars bright and near enough to the ecliptic to be met by planets.
 fn bright_zodiac_stars(epoch: Tt) -> Result<Vec<&'static Star>, CliError> {
-    const FAINTEST: f32 = 3.0;
+    const FAINTEST: f64 = 3.0;
     let frame = crate::sky::frames::ReferenceFrame::j2000();
     let catalogue = StarCatalogue::embedded().map_err(|error| CliError::Failed(error.to_string()))?;
     Ok(catalogue
-        .brighter_than(FAINTEST)
+        .to_magnitude(FAINTEST)
         .iter()
         .filter(|star| star.name.is_some())
         .filter(|star| (frame.ecliptic_from_icrs * star.direction_at(epoch)).latitude().degrees().abs() < 12.0)
