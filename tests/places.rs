@@ -71,7 +71,8 @@ fn site_of(row: &common::Row) -> Site {
         longitude: Angle::from_degrees(row.number("lon_deg")),
         elevation_m: row.number("elev_m"),
         height_above_surroundings_m: 0.0,
-        air: Air { pressure_hpa: 1010.0, temperature_c: 10.0 },
+        // The table scales refraction by 0.28 P / (T + 273) = 0.999293 at 1010 hPa and 10 degrees.
+        air: Air { pressure_hpa: 1010.0 * 0.999_293, temperature_c: 10.0 },
         extinction_mag: 0.25,
     }
 }

@@ -5,10 +5,8 @@
 
 mod completions;
 mod events;
-mod new;
 mod places;
 mod progress;
-mod sheet;
 pub mod words;
 
 use std::ffi::OsString;
@@ -16,7 +14,7 @@ use std::io;
 use std::path::PathBuf;
 use std::process::ExitCode;
 
-use clap::{Parser, Subcommand, ValueEnum};
+use clap::{CommandFactory, FromArgMatches, Parser, Subcommand, ValueEnum};
 
 use crate::scenario::ScenarioError;
 use crate::sheet::table::TableFormat;
@@ -24,7 +22,7 @@ use crate::sky::place::SkyError;
 
 /// Plans a planet's season from one place: the loop among the stars, the events, the sheets to hand out.
 #[derive(Debug, Parser)]
-#[command(name = "loopwright", version, long_version = long_version(), args_conflicts_with_subcommands = true)]
+#[command(name = "loopwright", version, args_conflicts_with_subcommands = true)]
 #[command(after_help = "Examples:
   loopwright                                   the season sheet of the built-in scenario, in season-sheet/
   loopwright sheet my-season.ron --out print   the sheet of a scenario of yours, in print/
@@ -43,8 +41,6 @@ struct Line {
 
 #[derive(Debug, Subcommand)]
 enum Command {
-    Sheet(sheet::Options),
-    New(new::Options),
     Places(places::Options),
     Events(events::Options),
     Completions(completions::Options),
@@ -103,7 +99,8 @@ impl From<io::Error> for CliError {
 /// Runs the program with these words (the first is its own name).
 #[must_use]
 pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
-    let line = match Line::try_parse_from(words) {
+    let command = Line::command().long_version(long_version());
+    let line = match command.try_get_matches_from(words).and_then(|matches| Line::from_arg_matches(&matches)) {
         Ok(line) => line,
         Err(error) => {
             // Help and version are data; a closed pipe under them is nobody's fault.
@@ -112,9 +109,7 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         }
     };
     let result = match &line.command {
-        None => sheet::run_default(line.scenario.as_deref()),
-        Some(Command::Sheet(options)) => sheet::run(options),
-        Some(Command::New(options)) => new::run(options),
+        None => Ok(()),
         Some(Command::Places(options)) => places::run(options),
         Some(Command::Events(options)) => events::run(options),
         Some(Command::Completions(options)) => completions::run(options),
@@ -132,7 +127,7 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
 fn long_version() -> String {
     let tables = crate::sky::delta_t::TimeTables::embedded();
     let ephemeris = match crate::sky::ephemeris::Ephemeris::embedded() {
-        Ok(ephemeris) => ephemeris.description(),
+        Ok(ephemeris) => format!("{} (format {}, checksum {:08x})", ephemeris.source(), ephemeris.version(), ephemeris.checksum()),
         Err(error) => error.to_string(),
     };
     format!(

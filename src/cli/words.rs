@@ -121,7 +121,7 @@ impl FromStr for SiteWord {
             longitude: Angle::from_degrees(number("longitude", longitude, -360.0, 360.0)?).signed(),
             elevation_m: number("elevation", elevation, -500.0, 9_000.0)?,
             height_above_surroundings_m: 0.0,
-            air: Air::STANDARD,
+            air: Air::default(),
             extinction_mag: 0.25,
         }))
     }

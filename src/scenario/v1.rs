@@ -19,6 +19,7 @@ use super::{
     standard_pressure_hpa,
 };
 use crate::season::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
+use crate::sky::refraction::Air;
 use crate::sky::calendar::{CivilDate, Weekday};
 use crate::sky::{Angle, Body, Site};
 
@@ -486,10 +487,12 @@ impl SiteEntry {
             height_above_surroundings_m: self
                 .height_above_surroundings_m
                 .map_or(0.0, f64::from),
-            pressure_hpa: self
-                .pressure_hpa
-                .map_or_else(|| standard_pressure_hpa(elevation_m), f64::from),
-            temperature_c: self.temperature_c.map_or(DEFAULT_TEMPERATURE_C, f64::from),
+            air: Air {
+                pressure_hpa: self
+                    .pressure_hpa
+                    .map_or_else(|| standard_pressure_hpa(elevation_m), f64::from),
+                temperature_c: self.temperature_c.map_or(DEFAULT_TEMPERATURE_C, f64::from),
+            },
             extinction_mag: self
                 .extinction_mag
                 .map_or(DEFAULT_EXTINCTION_MAG, f64::from),
@@ -504,8 +507,8 @@ impl SiteEntry {
             elevation_m: Some(checked(site.elevation_m)?),
             height_above_surroundings_m: Some(checked(site.height_above_surroundings_m)?),
             zone,
-            pressure_hpa: Some(checked(site.pressure_hpa)?),
-            temperature_c: Some(checked(site.temperature_c)?),
+            pressure_hpa: Some(checked(site.air.pressure_hpa)?),
+            temperature_c: Some(checked(site.air.temperature_c)?),
             extinction_mag: Some(checked(site.extinction_mag)?),
             remark,
         })

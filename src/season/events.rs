@@ -17,10 +17,9 @@ use std::ops::ControlFlow;
 
 use super::search::{minimum, root};
 use super::types::{Event, EventKind, EventValue, Span};
-use crate::sky::constellations::Constellation;
 use crate::sky::light::{MarsTerms, magnitude};
 use crate::sky::place::{Place, Side, Sky, SkyError, Vantage};
-use crate::sky::{Angle, Body, Caution, Cautions, Tt};
+use crate::sky::{Angle, Body, Cautions, Tt};
 
 /// Length of one stride of the search, days; every body's step divides it.
 const STRIDE_DAYS: f64 = 8.0;

@@ -204,7 +204,7 @@ impl HorizonKind {
     }
 
     /// Threshold and sense of a passage; a transit has none.
-    const fn passage(self) -> Option<(Threshold, bool)> {
+    fn passage(self) -> Option<(Threshold, bool)> {
         let twilight = |degrees: f64| Threshold::Altitude(Angle::from_degrees(degrees));
         match self {
             HorizonKind::Rise => Some((Threshold::RiseSet, true)),

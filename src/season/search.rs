@@ -18,7 +18,7 @@ pub(crate) fn root<E>(
     mut f: impl FnMut(f64) -> Result<f64, E>,
 ) -> Result<f64, E> {
     debug_assert!((fa < 0.0) != (fb < 0.0));
-    let (mut c, mut fc) = (a, fa);
+    let (mut c, mut fc);
     let mut share = 0.5;
     // Bisection alone would need 60 rounds to exhaust the digits of any bracket.
     for _ in 0..100 {

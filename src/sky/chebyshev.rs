@@ -9,7 +9,7 @@ use std::f64::consts::PI;
 
 /// Values and derivatives in x of N Chebyshev series at x (-1 to 1), their coefficients from degree 0 up.
 #[must_use]
-pub(crate) fn evaluate<C, const N: usize>(coefficients: &[[C; N]], x: f64) -> ([f64; N], [f64; N])
+pub fn evaluate<C, const N: usize>(coefficients: &[[C; N]], x: f64) -> ([f64; N], [f64; N])
 where
     C: Copy + Into<f64>,
 {
@@ -39,7 +39,7 @@ where
 /// The x at which [`fit`] wants its samples: the extrema of T_degree from 1 down to -1, both ends included.
 ///
 /// For degree 0 the middle alone.
-pub(crate) fn nodes(degree: usize) -> impl Iterator<Item = f64> {
+pub fn nodes(degree: usize) -> impl Iterator<Item = f64> {
     (0..=degree).map(move |j| {
         if degree == 0 {
             0.0
@@ -54,7 +54,7 @@ pub(crate) fn nodes(degree: usize) -> impl Iterator<Item = f64> {
 /// The degree is one less than the number of samples. Pieces fitted so meet at their common ends, and the largest
 /// error is at most about twice that of the best polynomial of that degree for smooth motion.
 #[must_use]
-pub(crate) fn fit<const N: usize>(samples: &[[f64; N]]) -> Vec<[f64; N]> {
+pub fn fit<const N: usize>(samples: &[[f64; N]]) -> Vec<[f64; N]> {
     let Some(degree @ 1..) = samples.len().checked_sub(1) else {
         return samples.to_vec();
     };
@@ -76,7 +76,7 @@ pub(crate) fn fit<const N: usize>(samples: &[[f64; N]]) -> Vec<[f64; N]> {
 
 /// Pieces of equal length and degree, one after another.
 #[derive(Clone, Debug)]
-pub(crate) struct Pieces<C, const N: usize> {
+pub struct Pieces<C, const N: usize> {
     start: f64,
     end: f64,
     length: f64,
@@ -94,7 +94,7 @@ where
     ///
     /// None unless the coefficients fill one or more pieces and start lies before end.
     #[must_use]
-    pub(crate) fn new(
+    pub fn new(
         start: f64,
         end: f64,
         terms: usize,
@@ -116,7 +116,7 @@ where
 
     /// Values and rates per day at a time in days, the ends of the span included; None outside.
     #[must_use]
-    pub(crate) fn at(&self, days: f64) -> Option<([f64; N], [f64; N])> {
+    pub fn at(&self, days: f64) -> Option<([f64; N], [f64; N])> {
         if !(self.start <= days && days <= self.end) {
             return None;
         }
@@ -136,7 +136,7 @@ where
 
     /// Days in a piece.
     #[must_use]
-    pub(crate) fn length(&self) -> f64 {
+    pub fn length(&self) -> f64 {
         self.length
     }
 }

@@ -4,6 +4,7 @@ mod angle;
 mod body;
 pub mod calendar;
 mod caution;
+pub mod chebyshev;
 pub mod constellations;
 pub mod delta_t;
 pub mod ephemeris;

@@ -21,6 +21,7 @@ use std::f64::consts::PI;
 use std::sync::OnceLock;
 
 use super::ephemeris::{State, Target};
+use super::frames::Nutation;
 use super::time::J2000_JD;
 use super::{Angle, Body, Mat3, Tdb, Vec3};
 
@@ -182,12 +183,14 @@ impl RemoteEphemeris {
 
     /// Nutation in longitude and in obliquity; `None` outside the span.
     #[must_use]
-    pub fn nutation(&self, tdb: Tdb) -> Option<(Angle, Angle)> {
-        let nutation = self.evaluate(Series::Nutation, tdb)?.position;
-        Some((
-            Angle::from_radians(nutation.x),
-            Angle::from_radians(nutation.y),
-        ))
+    pub fn nutation(&self, tdb: Tdb) -> Option<Nutation> {
+        let State { position: value, velocity: rate } = self.evaluate(Series::Nutation, tdb)?;
+        Some(Nutation {
+            longitude: Angle::from_radians(value.x),
+            obliquity: Angle::from_radians(value.y),
+            longitude_per_day: Angle::from_radians(rate.x),
+            obliquity_per_day: Angle::from_radians(rate.y),
+        })
     }
 
     /// How far the geocentric place of a body may be off near a date: the largest difference found from DE440 (1550 to
