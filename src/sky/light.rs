@@ -2,7 +2,7 @@
 //!
 //! Planets after Mallama and Hilton 2018, *Astronomy and Computing* 25, 10 (arXiv:1808.01973), with the true Sun and not
 //! the barycentre; the paper's own test rows come out within 0.0005 mag. The Moon by the phase law that goes with
-//! Krisciunas and Schaefer 1991, *PASP* 103, 1033 (within 0.02 mag of JPL's values from 5 to 110 degrees of phase). No
+//! Krisciunas and Schaefer 1991, *PASP* 103, 1033 (within 0.02 mag of four values of JPL). No
 //! extinction by air. Vectors are ICRS, au; instants TDB. The formulas for Neptune depend on the year.
 //!
 //! Outside the range a formula was made for the value stays finite and joins on where the paper allows it, and carries
