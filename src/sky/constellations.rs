@@ -38,19 +38,22 @@ const B1875_FROM_ICRS: Mat3 = Mat3::from_rows([
 /// spacing a chord leaves its parallel by 1" at most.
 const EDGE_STEP_DEGREES: f64 = 0.5;
 
+/// Right ascension in hours and declination in degrees, B1875.0.
+type Place = (f64, f64);
+
 /// What a constellation is called and where its name may stand.
 struct Names {
     abbreviation: &'static str,
     name: &'static str,
     genitive: &'static str,
-    anchors: &'static [(f64, f64)],
+    anchors: &'static [Place],
 }
 
 const fn names(
     abbreviation: &'static str,
     name: &'static str,
     genitive: &'static str,
-    anchors: &'static [(f64, f64)],
+    anchors: &'static [Place],
 ) -> Names {
     Names {
         abbreviation,
@@ -167,7 +170,7 @@ pub fn boundary_polylines() -> &'static [Boundary] {
 }
 
 /// Points along a chain of corners (hours, degrees, B1875.0), corners included.
-fn points_along(corners: &[(f64, f64)]) -> Vec<Vec3> {
+fn points_along(corners: &[Place]) -> Vec<Vec3> {
     let mut points = Vec::new();
     for pair in corners.windows(2) {
         let &[(hours, degrees), (next_hours, next_degrees)] = pair else {
