@@ -100,7 +100,10 @@ impl From<io::Error> for CliError {
 #[must_use]
 pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
     let command = Line::command().long_version(long_version());
-    let line = match command.try_get_matches_from(words).and_then(|matches| Line::from_arg_matches(&matches)) {
+    let line = match command
+        .try_get_matches_from(words)
+        .and_then(|matches| Line::from_arg_matches(&matches))
+    {
         Ok(line) => line,
         Err(error) => {
             // Help and version are data; a closed pipe under them is nobody's fault.
@@ -118,7 +121,11 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         Ok(()) | Err(CliError::ClosedPipe) => ExitCode::SUCCESS,
         Err(error) => {
             eprintln!("loopwright: {error}");
-            ExitCode::from(if matches!(error, CliError::Words(_)) { 2 } else { 1 })
+            ExitCode::from(if matches!(error, CliError::Words(_)) {
+                2
+            } else {
+                1
+            })
         }
     }
 }
@@ -127,7 +134,12 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
 fn long_version() -> String {
     let tables = crate::sky::delta_t::TimeTables::embedded();
     let ephemeris = match crate::sky::ephemeris::Ephemeris::embedded() {
-        Ok(ephemeris) => format!("{} (format {}, checksum {:08x})", ephemeris.source(), ephemeris.version(), ephemeris.checksum()),
+        Ok(ephemeris) => format!(
+            "{} (format {}, checksum {:08x})",
+            ephemeris.source(),
+            ephemeris.version(),
+            ephemeris.checksum()
+        ),
         Err(error) => error.to_string(),
     };
     format!(

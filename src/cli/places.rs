@@ -31,13 +31,24 @@ pub struct Options {
     #[arg(long, value_name = "LIST")]
     bodies: String,
     /// First instant: 2026-11-01, 2026-11, 2026-11-01T18:30:00Z or "JD 2461000.5 TT".
-    #[arg(long, value_name = "T", requires = "to", required_unless_present = "instants", allow_hyphen_values = true)]
+    #[arg(
+        long,
+        value_name = "T",
+        requires = "to",
+        required_unless_present = "instants",
+        allow_hyphen_values = true
+    )]
     from: Option<InstantWord>,
     /// End of the span, which does not belong to it.
     #[arg(long, value_name = "T", requires = "from", allow_hyphen_values = true)]
     to: Option<InstantWord>,
     /// Step: 1d, 6h, 10min, 30s.
-    #[arg(long, value_name = "STEP", default_value = "1d", allow_hyphen_values = true)]
+    #[arg(
+        long,
+        value_name = "STEP",
+        default_value = "1d",
+        allow_hyphen_values = true
+    )]
     step: StepWord,
     /// A file with one instant a line, or - for standard input; rows come out in its order.
     #[arg(long, value_name = "FILE", conflicts_with_all = ["from", "to", "step"])]
@@ -110,7 +121,9 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         }
         (None, Some(InstantWord(from)), Some(InstantWord(to))) => {
             if from >= to {
-                return Err(CliError::Words(String::from("--to must be later than --from")));
+                return Err(CliError::Words(String::from(
+                    "--to must be later than --from",
+                )));
             }
             let mut k = 0.0_f64;
             loop {
@@ -124,7 +137,11 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             }
         }
         // clap sees to it that one of the two is given.
-        _ => return Err(CliError::Words(String::from("give --from and --to, or --instants"))),
+        _ => {
+            return Err(CliError::Words(String::from(
+                "give --from and --to, or --instants",
+            )));
+        }
     }
     match table {
         Some(table) => table.finish().map(drop)?,
@@ -138,21 +155,43 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
 }
 
 fn read_instants(file: &std::path::Path) -> Result<Vec<Tt>, CliError> {
-    let name = if file.as_os_str() == "-" { String::from("standard input") } else { file.display().to_string() };
-    let cannot = |source| CliError::File { what: format!("{name} cannot be read"), source };
+    let name = if file.as_os_str() == "-" {
+        String::from("standard input")
+    } else {
+        file.display().to_string()
+    };
+    let cannot = |source| CliError::File {
+        what: format!("{name} cannot be read"),
+        source,
+    };
     let mut bytes = Vec::new();
     if file.as_os_str() == "-" {
-        std::io::stdin().lock().take(LARGEST_FILE + 1).read_to_end(&mut bytes).map_err(cannot)?;
+        std::io::stdin()
+            .lock()
+            .take(LARGEST_FILE + 1)
+            .read_to_end(&mut bytes)
+            .map_err(cannot)?;
     } else {
         let opened = std::fs::File::open(file).map_err(cannot)?;
-        opened.take(LARGEST_FILE + 1).read_to_end(&mut bytes).map_err(cannot)?;
+        opened
+            .take(LARGEST_FILE + 1)
+            .read_to_end(&mut bytes)
+            .map_err(cannot)?;
     }
     if bytes.len() as u64 > LARGEST_FILE {
-        return Err(CliError::Failed(format!("{name} is larger than 64 MB; split it")));
+        return Err(CliError::Failed(format!(
+            "{name} is larger than 64 MB; split it"
+        )));
     }
-    let text = String::from_utf8(bytes)
-        .map_err(|_| CliError::Failed(format!("{name} is not UTF-8 text; it holds one instant a line")))?;
-    let lines = text.lines().enumerate().map(|(index, line)| (index + 1, line.trim()));
+    let text = String::from_utf8(bytes).map_err(|_| {
+        CliError::Failed(format!(
+            "{name} is not UTF-8 text; it holds one instant a line"
+        ))
+    })?;
+    let lines = text
+        .lines()
+        .enumerate()
+        .map(|(index, line)| (index + 1, line.trim()));
     lines
         .filter(|(_, line)| !line.is_empty() && !line.starts_with('#'))
         .map(|(number, line)| {
@@ -183,11 +222,18 @@ impl Skies {
         if self.series.as_ref().is_none_or(|sky| !sky.covers(instant)) {
             self.series = Some(Sky::for_span(instant, instant)?);
         }
-        self.series.as_ref().ok_or(SkyError::OutsideAllSpans { jd: instant.julian_date() })
+        self.series.as_ref().ok_or(SkyError::OutsideAllSpans {
+            jd: instant.julian_date(),
+        })
     }
 }
 
-fn row(sky: &Sky, vantage: &Vantage<'_>, site: Option<&Site>, body: Body) -> Result<Vec<Cell>, SkyError> {
+fn row(
+    sky: &Sky,
+    vantage: &Vantage<'_>,
+    site: Option<&Site>,
+    body: Body,
+) -> Result<Vec<Cell>, SkyError> {
     let place = vantage.place(body)?;
     let sun = vantage.place(Body::Sun)?;
     let geometry = place.geometry();
@@ -222,7 +268,8 @@ fn row(sky: &Sky, vantage: &Vantage<'_>, site: Option<&Site>, body: Body) -> Res
         Cell::text(Constellation::at_icrs(place.direction).abbreviation()),
         Cell::number(seen.map(|seen| seen.altitude.degrees()), 7),
         Cell::number(
-            seen.zip(site).map(|(seen, site)| apparent_from_true(seen.altitude, &site.air).degrees()),
+            seen.zip(site)
+                .map(|(seen, site)| apparent_from_true(seen.altitude, &site.air).degrees()),
             7,
         ),
         Cell::number(seen.map(|seen| seen.azimuth.degrees()), 7),
@@ -245,7 +292,11 @@ fn utc_words(sky: &Sky, instant: Tt) -> String {
     let utc = sky.tables().utc_from_tt(instant);
     let seconds = (utc.days().fract() * 86_400.0).abs();
     let whole = (seconds - seconds.round()).abs() < 5e-4;
-    let precision = if whole { Precision::Second } else { Precision::Decimals(3) };
+    let precision = if whole {
+        Precision::Second
+    } else {
+        Precision::Decimals(3)
+    };
     utc_text(utc, precision).unwrap_or_else(|error| error.to_string())
 }
 

@@ -280,7 +280,8 @@ impl Ephemeris {
     /// The argument of the theory is TT; TDB in its place changes nothing above 1e-8".
     #[must_use]
     pub fn nutation(&self, instant: Tdb) -> Option<Nutation> {
-        let ([longitude, obliquity], [longitude_rate, obliquity_rate]) = self.nutation.at(instant.days())?;
+        let ([longitude, obliquity], [longitude_rate, obliquity_rate]) =
+            self.nutation.at(instant.days())?;
         Some(Nutation {
             longitude: Angle::from_radians(longitude),
             obliquity: Angle::from_radians(obliquity),

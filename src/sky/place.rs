@@ -47,7 +47,9 @@ pub enum SkyError {
         "JD {jd:.1} TT lies outside the years -2000 to 3000 for which places can be computed; choose a date within them"
     )]
     OutsideAllSpans { jd: f64 },
-    #[error("JD {jd:.1} TT lies outside the span of the tables in use ({source_name}); ask for a sky that covers it")]
+    #[error(
+        "JD {jd:.1} TT lies outside the span of the tables in use ({source_name}); ask for a sky that covers it"
+    )]
     OutsideSource { jd: f64, source_name: &'static str },
     #[error(transparent)]
     Ephemeris(#[from] EphemerisError),
@@ -82,13 +84,24 @@ impl Sky {
         };
         let ephemeris = Ephemeris::embedded()?;
         if inside(ephemeris.span(), SPAN_MARGIN_DAYS) {
-            return Ok(Sky { source: Source::De440(ephemeris), tables });
+            return Ok(Sky {
+                source: Source::De440(ephemeris),
+                tables,
+            });
         }
         let series = RemoteEphemeris::new();
         if inside(series.span(), 0.0) {
-            return Ok(Sky { source: Source::Series(Arc::new(series)), tables });
+            return Ok(Sky {
+                source: Source::Series(Arc::new(series)),
+                tables,
+            });
         }
-        let jd = if inside((series.span().0, Tdb::from_days(f64::MAX)), 0.0) { to } else { from }.julian_date();
+        let jd = if inside((series.span().0, Tdb::from_days(f64::MAX)), 0.0) {
+            to
+        } else {
+            from
+        }
+        .julian_date();
         Err(SkyError::OutsideAllSpans { jd })
     }
 
@@ -97,7 +110,10 @@ impl Sky {
     /// # Errors
     /// A damaged embedded table.
     pub fn de440() -> Result<Sky, SkyError> {
-        Ok(Sky { source: Source::De440(Ephemeris::embedded()?), tables: TimeTables::embedded() })
+        Ok(Sky {
+            source: Source::De440(Ephemeris::embedded()?),
+            tables: TimeTables::embedded(),
+        })
     }
 
     /// The tables that join the time scales.
@@ -146,7 +162,10 @@ impl Sky {
             Source::De440(_) => "DE440, 1550 to 2650",
             Source::Series(_) => "analytic series, -2000 to 3000",
         };
-        SkyError::OutsideSource { jd: instant.julian_date(), source_name }
+        SkyError::OutsideSource {
+            jd: instant.julian_date(),
+            source_name,
+        }
     }
 
     /// Barycentric state on ICRS axes (the Moon's from the Earth's centre).
@@ -175,7 +194,11 @@ impl Sky {
     /// An instant outside the source.
     pub fn frame_of_date(&self, instant: Tt) -> Result<ReferenceFrame, SkyError> {
         let nutation = self.nutation(Tdb::from_tt(instant))?;
-        Ok(ReferenceFrame::of_date(instant, nutation, self.precession()))
+        Ok(ReferenceFrame::of_date(
+            instant,
+            nutation,
+            self.precession(),
+        ))
     }
 
     /// The view from the Earth's centre.
@@ -196,7 +219,17 @@ impl Sky {
         // The Moon draws the Earth with a 170th of the Sun's pull: it counts in the rate of aberration.
         let moon_pull = attraction(moon.position, GM_SUN / SUN_EARTH_RATIO / EARTH_MOON_RATIO);
         let acceleration = attraction(sun.position - earth.position, GM_SUN) + moon_pull;
-        Ok(Vantage { sky: self, instant, tdb, frame, sun, moon, observer: earth, acceleration, horizon: None })
+        Ok(Vantage {
+            sky: self,
+            instant,
+            tdb,
+            frame,
+            sun,
+            moon,
+            observer: earth,
+            acceleration,
+            horizon: None,
+        })
     }
 
     /// The view from a site, UT1 from the tables.
@@ -211,15 +244,23 @@ impl Sky {
     ///
     /// # Errors
     /// An instant outside the source.
-    pub fn observer_at_ut1(&self, site: &Site, instant: Tt, ut1: Ut1) -> Result<Vantage<'_>, SkyError> {
+    pub fn observer_at_ut1(
+        &self,
+        site: &Site,
+        instant: Tt,
+        ut1: Ut1,
+    ) -> Result<Vantage<'_>, SkyError> {
         let mut vantage = self.geocentre(instant)?;
-        let sidereal =
-            (frames::apparent_sidereal_time(ut1, instant, &vantage.frame) + site.longitude).wrapped();
+        let sidereal = (frames::apparent_sidereal_time(ut1, instant, &vantage.frame)
+            + site.longitude)
+            .wrapped();
         let (sin_theta, cos_theta) = sidereal.sin_cos();
         let (sin_phi, cos_phi) = site.latitude.sin_cos();
         let up = Vec3::new(cos_phi * cos_theta, cos_phi * sin_theta, sin_phi);
         let east = Vec3::new(-sin_theta, cos_theta, 0.0);
-        let local_from_true = Mat3 { rows: [east, up.cross(east), up] };
+        let local_from_true = Mat3 {
+            rows: [east, up.cross(east), up],
+        };
 
         let (axial_au, polar_au) = site.geocentric_au();
         let position = Vec3::new(axial_au * cos_theta, axial_au * sin_theta, polar_au);
@@ -229,8 +270,10 @@ impl Sky {
         vantage.observer.position += icrs_from_true * position;
         vantage.observer.velocity += icrs_from_true * velocity;
         vantage.acceleration += icrs_from_true * spin.cross(velocity);
-        vantage.horizon =
-            Some(Horizon { local_from_icrs: local_from_true * vantage.frame.equatorial_from_icrs, sidereal });
+        vantage.horizon = Some(Horizon {
+            local_from_icrs: local_from_true * vantage.frame.equatorial_from_icrs,
+            sidereal,
+        });
         Ok(vantage)
     }
 }
@@ -289,11 +332,17 @@ impl Vantage<'_> {
                     position: barycentre.position + self.moon.position * share,
                     velocity: barycentre.velocity + self.moon.velocity * share,
                 };
-                (state, attraction(self.sun.position - state.position, GM_SUN))
+                (
+                    state,
+                    attraction(self.sun.position - state.position, GM_SUN),
+                )
             }
             planet => {
                 let state = self.sky.state(target_of(planet), self.tdb)?;
-                (state, attraction(self.sun.position - state.position, GM_SUN))
+                (
+                    state,
+                    attraction(self.sun.position - state.position, GM_SUN),
+                )
             }
         };
         let geometric = state.position - self.observer.position;
@@ -317,7 +366,11 @@ impl Vantage<'_> {
         let heliocentric = astrometric + self.observer.position - sun_then;
         let deflected = match body {
             Body::Sun => direction,
-            _ => deflect(direction, heliocentric, self.observer.position - self.sun.position),
+            _ => deflect(
+                direction,
+                heliocentric,
+                self.observer.position - self.sun.position,
+            ),
         };
         let apparent = self.aberrate(deflected);
         let mut place = Place {
@@ -345,8 +398,11 @@ impl Vantage<'_> {
     /// The apparent direction, on ICRS axes, of something infinitely far in the (astrometric) direction given.
     #[must_use]
     pub fn apparent_of_star(&self, direction: Vec3) -> Vec3 {
-        let deflected =
-            deflect(direction, direction * 1e9, self.observer.position - self.sun.position);
+        let deflected = deflect(
+            direction,
+            direction * 1e9,
+            self.observer.position - self.sun.position,
+        );
         self.aberrate(deflected)
     }
 
@@ -466,7 +522,10 @@ pub struct Spherical {
 impl Spherical {
     #[must_use]
     pub fn of(direction: Vec3) -> Self {
-        Spherical { longitude: direction.longitude(), latitude: direction.latitude() }
+        Spherical {
+            longitude: direction.longitude(),
+            latitude: direction.latitude(),
+        }
     }
 }
 
@@ -482,14 +541,21 @@ pub struct SphericalRate {
 impl SphericalRate {
     fn of(v: Vec3, rate: Vec3) -> Self {
         let across = v.x * v.x + v.y * v.y;
-        let longitude = if across > 0.0 { (v.x * rate.y - v.y * rate.x) / across } else { 0.0 };
+        let longitude = if across > 0.0 {
+            (v.x * rate.y - v.y * rate.x) / across
+        } else {
+            0.0
+        };
         let norm = v.norm();
         let latitude = if across > 0.0 {
             (rate.z - v.z * v.dot(rate) / (norm * norm)) / across.sqrt()
         } else {
             0.0
         };
-        SphericalRate { longitude: Angle::from_radians(longitude), latitude: Angle::from_radians(latitude) }
+        SphericalRate {
+            longitude: Angle::from_radians(longitude),
+            latitude: Angle::from_radians(latitude),
+        }
     }
 }
 
@@ -564,7 +630,8 @@ impl Place {
     /// Rate of [`Place::direction`], radians a day.
     #[must_use]
     pub fn direction_rate(&self) -> Vec3 {
-        let across = self.astrometric_rate - self.direction * self.direction.dot(self.astrometric_rate);
+        let across =
+            self.astrometric_rate - self.direction * self.direction.dot(self.astrometric_rate);
         across * (1.0 / self.distance_au)
     }
 
@@ -577,7 +644,9 @@ impl Place {
     /// Rates of [`Place::equatorial_of_date`], the turning of the axes included.
     #[must_use]
     pub fn equatorial_rate(&self) -> SphericalRate {
-        let rate = self.frame.equatorial_rate(self.apparent, self.apparent_rate);
+        let rate = self
+            .frame
+            .equatorial_rate(self.apparent, self.apparent_rate);
         SphericalRate::of(self.frame.equatorial_from_icrs * self.apparent, rate)
     }
 
@@ -624,7 +693,8 @@ impl Place {
         if sine == 0.0 {
             return Angle::ZERO;
         }
-        let cosine_rate = self.apparent_rate.dot(other.apparent) + self.apparent.dot(other.apparent_rate);
+        let cosine_rate =
+            self.apparent_rate.dot(other.apparent) + self.apparent.dot(other.apparent_rate);
         Angle::from_radians(-cosine_rate / sine)
     }
 
@@ -632,6 +702,10 @@ impl Place {
     #[must_use]
     pub fn side_of(&self, sun: &Place) -> Side {
         let difference = self.ecliptic_of_date().longitude - sun.ecliptic_of_date().longitude;
-        if difference.signed() >= Angle::ZERO { Side::East } else { Side::West }
+        if difference.signed() >= Angle::ZERO {
+            Side::East
+        } else {
+            Side::West
+        }
     }
 }

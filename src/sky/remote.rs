@@ -184,7 +184,10 @@ impl RemoteEphemeris {
     /// Nutation in longitude and in obliquity; `None` outside the span.
     #[must_use]
     pub fn nutation(&self, tdb: Tdb) -> Option<Nutation> {
-        let State { position: value, velocity: rate } = self.evaluate(Series::Nutation, tdb)?;
+        let State {
+            position: value,
+            velocity: rate,
+        } = self.evaluate(Series::Nutation, tdb)?;
         Some(Nutation {
             longitude: Angle::from_radians(value.x),
             obliquity: Angle::from_radians(value.y),
