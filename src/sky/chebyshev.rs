@@ -101,7 +101,8 @@ where
         quantum: f64,
         coefficients: Vec<[C; N]>,
     ) -> Option<Self> {
-        let whole = terms > 0 && !coefficients.is_empty() && coefficients.len() % terms == 0;
+        let whole =
+            terms > 0 && !coefficients.is_empty() && coefficients.len().is_multiple_of(terms);
         let length = (end - start) * terms as f64 / coefficients.len() as f64;
         (whole && length > 0.0 && length.is_finite()).then_some(Pieces {
             start,
