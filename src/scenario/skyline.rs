@@ -258,7 +258,9 @@ fn read_point(azimuth: &str, altitude: &str, part: Option<&str>) -> Result<Skyli
 fn read_number(field: &str, text: &str) -> Result<f64, String> {
     text.parse().map_err(|_| {
         let shown: String = text.chars().take(40).collect();
-        format!("{field} \"{shown}\" is not a number: write degrees with a decimal point, as in 143.5")
+        format!(
+            "{field} \"{shown}\" is not a number: write degrees with a decimal point, as in 143.5"
+        )
     })
 }
 

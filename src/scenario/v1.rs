@@ -366,7 +366,6 @@ struct ViewEntry {
     turned: bool,
 }
 
-
 impl Document {
     /// Settles defaults and reads the skyline's file, if the document names one, in `folder`.
     pub(super) fn into_scenario(self, folder: &Path) -> Result<Scenario, SkylineError> {
@@ -409,8 +408,9 @@ impl Document {
                 None => source_from(&skyline)?,
             },
             conditions: conditions.into_conditions(),
-            sun_distance: sun_distance
-                .map_or(DEFAULT_SUN_DISTANCE, |angle| Angle::from_degrees(angle.into())),
+            sun_distance: sun_distance.map_or(DEFAULT_SUN_DISTANCE, |angle| {
+                Angle::from_degrees(angle.into())
+            }),
             view: View {
                 theme: view.theme,
                 turned: view.turned,
@@ -483,9 +483,7 @@ impl SiteEntry {
             latitude: Angle::from_degrees(self.latitude.into()),
             longitude: Angle::from_degrees(self.longitude.into()),
             elevation_m,
-            height_above_surroundings_m: self
-                .height_above_surroundings_m
-                .map_or(0.0, f64::from),
+            height_above_surroundings_m: self.height_above_surroundings_m.map_or(0.0, f64::from),
             pressure_hpa: self
                 .pressure_hpa
                 .map_or_else(|| standard_pressure_hpa(elevation_m), f64::from),
@@ -572,10 +570,7 @@ impl ConditionsEntry {
         }
     }
 
-    fn from_conditions(
-        conditions: &Conditions,
-        remark: Option<String>,
-    ) -> Result<Self, String> {
+    fn from_conditions(conditions: &Conditions, remark: Option<String>) -> Result<Self, String> {
         Ok(ConditionsEntry {
             remark,
             least_altitude: Some(degrees(conditions.least_altitude)?),
@@ -604,11 +599,9 @@ impl MoonEntry {
     fn into_rule(self) -> MoonRule {
         let default = MoonRule::default();
         MoonRule {
-            least_distance: self
-                .least_distance
-                .map_or(default.least_distance, |given| {
-                    Angle::from_degrees(given.into())
-                }),
+            least_distance: self.least_distance.map_or(default.least_distance, |given| {
+                Angle::from_degrees(given.into())
+            }),
             unless_lit_below: self
                 .unless_lit_below
                 .map_or(default.unless_lit_below, f64::from),
