@@ -9,13 +9,15 @@ use loopwright::scenario::files::{
     FileError, MANIFEST_NAME, Output, Replace, write_outputs, write_whole,
 };
 use loopwright::scenario::{
-    NEWEST_VERSION, Scenario, ScenarioError, SeasonDates, SkylineOrigin, SkylinePoint,
-    SkylineSource, Theme, Zone, standard_pressure_hpa,
+    NEWEST_VERSION, Scenario, ScenarioError, SeasonDates, SkylineOrigin, SkylineSource, Theme,
+    Zone, standard_pressure_hpa,
 };
 use loopwright::season::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 use loopwright::sky::calendar::{CivilDate, DateTime, Precision, Weekday, parse_utc, utc_text};
 use loopwright::sky::delta_t::TimeTables;
-use loopwright::sky::{Angle, Body, Site};
+use loopwright::sky::refraction::Air;
+use loopwright::sky::skyline::SkylinePoint;
+use loopwright::sky::{Angle, Body, Site, Skyline};
 use proptest::prelude::*;
 use tempfile::TempDir;
 
@@ -87,7 +89,7 @@ fn every_shipped_scenario_loads_and_survives_a_round_trip() {
         let again = read(&text).unwrap_or_else(|error| panic!("{error}\n{text}"));
         assert_eq!(again.to_ron().unwrap(), text, "{name}");
         // A skyline from a file comes back as points in the document; all else is equal.
-        assert_eq!(again.skyline.points(), scenario.skyline.points());
+        assert_eq!(again.skyline.surveyed(), scenario.skyline.surveyed());
         let mut with_origin = again.clone();
         with_origin.skyline = scenario.skyline.clone();
         assert_eq!(with_origin, scenario, "{name}");
@@ -134,9 +136,10 @@ fn the_embedded_scenario_is_the_mars_loop() {
     );
     let parts: Vec<&str> = scenario
         .skyline
-        .points()
+        .surveyed()
+        .vertices()
         .iter()
-        .filter_map(|point| point.part.as_deref())
+        .filter_map(|vertex| vertex.name.as_deref())
         .collect();
     assert!(parts.contains(&"the ridge") && parts.contains(&"the mill"));
 }
@@ -149,15 +152,22 @@ fn the_mercury_scenario_reads_the_skyline_beside_it() {
         SkylineOrigin::File { name, .. } if name == "mercury-roofs-2029.csv"
     ));
     // The rows of the file.
-    assert_eq!(scenario.skyline.points().len(), 37);
-    let tower = scenario
-        .skyline
-        .points()
-        .iter()
-        .find(|point| point.part.as_deref() == Some("the church tower"))
-        .unwrap();
-    assert!((tower.azimuth.degrees() - 262.4).abs() < 1e-12);
-    assert!((tower.altitude.degrees() - 17.5).abs() < 1e-12);
+    assert_eq!(scenario.skyline.surveyed().vertices().len(), 37);
+    let behind_the_tower = Angle::from_degrees(263.0);
+    let polygon = scenario.skyline.polygon();
+    assert_eq!(polygon.part_at(behind_the_tower), Some("the church tower"));
+    assert!(polygon.altitude_at(behind_the_tower).degrees() > 17.5);
+}
+
+#[test]
+fn a_smooth_skyline_passes_through_its_points() {
+    let scenario = Scenario::load(&shipped("saturn-thin-rings-2038.ron")).unwrap();
+    let (surveyed, polygon) = (scenario.skyline.surveyed(), scenario.skyline.polygon());
+    assert!(polygon.vertices().len() > 500);
+    for vertex in surveyed.vertices() {
+        let found = polygon.altitude_at(vertex.azimuth);
+        assert!((found - vertex.altitude).abs().degrees() < 1e-9);
+    }
 }
 
 // What a document means
@@ -172,12 +182,80 @@ fn what_is_left_out_has_its_default() {
     assert_eq!(scenario.season, None);
     assert_eq!(scenario.span(TimeTables::embedded()).unwrap(), None);
     assert_eq!(scenario.site.elevation_m, 0.0);
-    assert_eq!(scenario.site.pressure_hpa, 1013.25);
+    assert_eq!(scenario.site.air.pressure_hpa, 1013.25);
     assert_eq!(scenario.skyline, SkylineSource::flat());
     assert_eq!(scenario.conditions, Conditions::default());
     assert_eq!(scenario.sun_distance, Angle::from_degrees(20.0));
     assert_eq!(scenario.view.theme, Theme::Light);
     assert!(!scenario.view.turned);
+}
+
+#[test]
+fn a_file_of_version_1_keeps_its_meaning() {
+    // Every field of the version, as it was first written; this file and these values never change.
+    let text = fs::read_to_string(
+        Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/scenario_v1.ron"),
+    )
+    .unwrap();
+    let scenario = read(&text).unwrap();
+    let degrees = Angle::from_degrees;
+    let note = |text: &str| Some(text.to_owned());
+    let corner = |azimuth, altitude, name: Option<&str>| SkylinePoint {
+        azimuth,
+        altitude,
+        name: name.map(str::to_owned),
+    };
+    let skyline = Skyline::new(vec![
+        corner(90.0, 5.5, Some("shed")),
+        corner(270.0, -0.5, None),
+    ])
+    .unwrap();
+    let mut expected = Scenario::embedded().unwrap();
+    expected.title = "Version 1".to_owned();
+    expected.subject = Body::Saturn;
+    expected.companions = vec![Body::Jupiter, Body::Moon];
+    expected.season = Some(SeasonDates {
+        from: civil("-0746-02-26"),
+        to: civil("-0745-02-26"),
+    });
+    expected.site = Site {
+        name: "Somewhere".to_owned(),
+        latitude: degrees(-35.25),
+        longitude: degrees(-70.5),
+        elevation_m: 2400.0,
+        height_above_surroundings_m: 300.0,
+        air: Air {
+            pressure_hpa: 760.0,
+            temperature_c: 5.0,
+        },
+        extinction_mag: 0.125,
+    };
+    expected.zone = Zone::LocalMeanTime;
+    expected.skyline = SkylineSource::in_document(skyline, true);
+    expected.conditions = Conditions {
+        least_altitude: degrees(15.0),
+        clearance: degrees(1.0),
+        sun_below: degrees(-9.0),
+        moon: Some(MoonRule {
+            least_distance: degrees(8.0),
+            unless_lit_below: 0.5,
+        }),
+        hours: Some(Hours {
+            from: ClockTime::new(20, 0).unwrap(),
+            to: ClockTime::new(24, 0).unwrap(),
+        }),
+        weekdays: Weekdays::from_days(&[Weekday::Monday]).unwrap(),
+    };
+    expected.sun_distance = degrees(30.0);
+    expected.view.theme = Theme::Red;
+    expected.view.turned = true;
+    expected.remarks.scenario = note("a");
+    expected.remarks.season = note("b");
+    expected.remarks.site = note("c");
+    expected.remarks.skyline = note("d");
+    expected.remarks.conditions = note("e");
+    expected.remarks.view = note("f");
+    assert_eq!(scenario, expected);
 }
 
 #[test]
@@ -411,12 +489,12 @@ fn three_points_at_one_azimuth_are_refused() {
     let message = complaint(&spoilt(points, &three));
     assert!(message.starts_with("plan.ron:8:"), "{message}");
     assert!(
-        message.contains("three") && message.contains("90"),
+        message.contains("point 3") && message.contains("third") && message.contains("90"),
         "{message}"
     );
     // 360 is 0 again.
     let round = "(azimuth: 0, altitude: 5), (azimuth: 360, altitude: 6), (azimuth: 0, altitude: 7)";
-    assert!(complaint(&spoilt(points, round)).contains("three"));
+    assert!(complaint(&spoilt(points, round)).contains("third"));
     read(&spoilt(points, &format!("{points}, {points}"))).unwrap();
 }
 
@@ -468,7 +546,10 @@ fn broken_syntax_is_told_with_its_place() {
     assert!(complaint(&spoilt("\"Test\"", "\"\"")).starts_with("plan.ron:3:"));
     assert!(complaint(&spoilt("\"Test\"", "\"two\\nlines\"")).contains("one line"));
     let trailing = complaint(&format!("{SMALL})"));
-    assert!(trailing.starts_with("plan.ron:10:1: "), "{trailing}");
+    assert!(
+        trailing.starts_with("plan.ron:9:2: ") && trailing.contains("closing bracket"),
+        "{trailing}"
+    );
 }
 
 #[test]
@@ -545,52 +626,32 @@ fn a_bad_skyline_file_is_told_with_its_line() {
     );
     assert!(missing.contains("scenario's folder"), "{missing}");
     for (csv, words) in [
-        ("azimuth_deg,altitude_deg\n10,x\n", "line 2: altitude \"x\""),
-        (
-            "# note\n10,5\n400,5\n",
-            "line 3: azimuth 400 is out of range",
-        ),
-        ("10,5\n20\n", "line 2: 1 columns"),
-        ("10,5,a,b\n", "line 1: 4 columns"),
-        ("10;5\n", "use commas"),
-        ("10,5\n,\n", "line 2: azimuth \"\""),
-        ("10,NaN\n", "line 1: altitude NaN"),
+        ("azimuth_deg,altitude_deg\n10,x\n", "line 2"),
+        ("# note\n10,5\n400,5\n", "line 3: azimuth 400"),
+        ("10,5\n20\n", "line 2: 1 fields"),
+        ("10;5\n", "between commas"),
+        ("10,1\n10,2\n10,3\n", "third point"),
         ("azimuth,altitude\n", "no points"),
         ("", "no points"),
-        ("10,1\n10,2\n10,3\n", "three"),
     ] {
         fs::write(folder.path().join("skyline.csv"), csv).unwrap();
         let message = Scenario::load(&plan).unwrap_err().to_string();
+        assert!(
+            message.contains("plan.ron: skyline file ") && message.contains("skyline.csv: "),
+            "{message}"
+        );
         assert!(message.contains(words), "{csv:?}: {message}");
     }
     fs::write(folder.path().join("skyline.csv"), b"10,\xff\n").unwrap();
-    assert!(
-        Scenario::load(&plan)
-            .unwrap_err()
-            .to_string()
-            .contains("UTF-8")
-    );
-    fs::write(
-        folder.path().join("skyline.csv"),
-        "\u{feff}azimuth,altitude,part\r\n10,5,\"the mill, west\"\r\n350, -0.5,\r\n",
-    )
-    .unwrap();
-    let read = Scenario::load(&plan).unwrap();
-    assert_eq!(
-        read.skyline.points(),
-        [
-            SkylinePoint {
-                azimuth: Angle::from_degrees(10.0),
-                altitude: Angle::from_degrees(5.0),
-                part: Some("the mill, west".to_owned()),
-            },
-            SkylinePoint {
-                azimuth: Angle::from_degrees(350.0),
-                altitude: Angle::from_degrees(-0.5),
-                part: None,
-            },
-        ]
-    );
+    let message = Scenario::load(&plan).unwrap_err().to_string();
+    assert!(message.contains("UTF-8"), "{message}");
+    let huge = vec![b'#'; (4 << 20) + 1];
+    fs::write(folder.path().join("skyline.csv"), huge).unwrap();
+    let message = Scenario::load(&plan).unwrap_err().to_string();
+    assert!(message.contains("4194304"), "{message}");
+    fs::write(folder.path().join("skyline.csv"), "10,5,the mill\r\n").unwrap();
+    let level = Scenario::load(&plan).unwrap();
+    assert_eq!(level.skyline.surveyed().vertices().len(), 1);
     for name in ["../skyline.csv", "/etc/hosts", "", "."] {
         let message = complaint(&text.replace("skyline.csv", name));
         assert!(message.starts_with("plan.ron:8:"), "{message}");
@@ -615,7 +676,7 @@ fn a_new_scenario_reads_back_and_says_what_to_do() {
     assert!(text.starts_with("Scenario(\n    version: 1,\n    title: \"Mars 2026 to 2027\",\n"));
     assert!(text.contains("azimuth,altitude a row"));
     // The example that a remark gives is itself a sound skyline.
-    let example = r#"points: [(azimuth: 143, altitude: 5.2, part: "the mill")]"#;
+    let example = r#"points: [(azimuth: 143, altitude: 5.2, name: "the mill")]"#;
     assert!(text.contains(example), "{text}");
     read(&spoilt("points: [(azimuth: 90, altitude: 5)]", example)).unwrap();
 }
@@ -680,7 +741,7 @@ fn a_skyline_file_stays_beside_its_scenario_and_goes_inside_elsewhere() {
     let copy = elsewhere.path().join("copy.ron");
     scenario.save(&copy).unwrap();
     let copied = Scenario::load(&copy).unwrap();
-    assert_eq!(copied.skyline.points(), scenario.skyline.points());
+    assert_eq!(copied.skyline.surveyed(), scenario.skyline.surveyed());
     assert_eq!(copied.skyline.origin(), &SkylineOrigin::Document);
 }
 
@@ -887,29 +948,36 @@ fn any_site() -> impl Strategy<Value = Site> {
             longitude,
             elevation_m: air.0,
             height_above_surroundings_m: air.1,
-            pressure_hpa: air.2,
-            temperature_c: air.3,
+            air: Air {
+                pressure_hpa: air.2,
+                temperature_c: air.3,
+            },
             extinction_mag: air.4,
         })
 }
 
 fn any_skyline() -> impl Strategy<Value = SkylineSource> {
-    let point = (degrees(-90, 90), proptest::option::of("[^\\p{Cc}]{0,20}x"));
-    (
-        proptest::collection::btree_map(0..3600_u16, point, 0..20),
-        any::<bool>(),
-    )
-        .prop_map(|(points, smooth)| {
-            let points = points
-                .into_iter()
-                .map(|(tenths, (altitude, part))| SkylinePoint {
-                    azimuth: Angle::from_degrees(f64::from(tenths) / 10.0),
+    // Altitudes to eight decimals; one or two points at an azimuth.
+    let height = (-9_000_000_000..=9_000_000_000_i64).prop_map(|steps| steps as f64 / 1e8);
+    let point = (
+        height.clone(),
+        proptest::option::of(height),
+        proptest::option::of("[^\\p{Cc}]{0,20}x"),
+    );
+    let points = proptest::collection::btree_map(0..3600_u16, point, 0..20);
+    (points, any::<bool>()).prop_map(|(points, smooth)| {
+        let mut list = Vec::new();
+        for (tenths, (altitude, wall, name)) in points {
+            for altitude in [Some(altitude), wall].into_iter().flatten() {
+                list.push(SkylinePoint {
+                    azimuth: f64::from(tenths) / 10.0,
                     altitude,
-                    part,
-                })
-                .collect();
-            SkylineSource::from_points(points, smooth).unwrap()
-        })
+                    name: name.clone(),
+                });
+            }
+        }
+        SkylineSource::in_document(Skyline::new(list).unwrap(), smooth)
+    })
 }
 
 fn any_conditions() -> impl Strategy<Value = Conditions> {

@@ -6,7 +6,7 @@
 //!   the field, naming it, rather than lose it on saving.
 //! - Where a field changes its meaning or its name, the version goes up: the new struct goes into a new module `v2`, with
 //!   `impl From<v1::Document> for v2::Document`; here `1 => read::<v1::Document>(text).map(v2::Document::from)` joins the
-//!   line for `2`, [`Newest`] and [`NEWEST_VERSION`] move on. The older struct stays as it is, and a file of each
+//!   line for `2`, `Newest` and [`NEWEST_VERSION`] move on. The older struct stays as it is, and a file of each
 //!   version stays among the tests.
 
 use ron::error::{Error, Position, SpannedError, SpannedResult};
@@ -155,6 +155,9 @@ fn document_error(text: &str, origin: &str, error: SpannedError) -> ScenarioErro
             format!("field {field} is given twice: keep one")
         }
         Error::Eof | Error::ExpectedStringEnd => ENDS_TOO_EARLY.to_owned(),
+        Error::TrailingCharacters => {
+            "something stands after the closing bracket of the scenario: take it away".to_owned()
+        }
         // What is expected where nothing more stands is what is missing.
         _ if error.span.end == end_of(text) => ENDS_TOO_EARLY.to_owned(),
         other => first_lower(&other.to_string()),
