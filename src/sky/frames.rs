@@ -86,6 +86,19 @@ const OBLIQUITY: [f64; 6] = [
     -0.000_000_043_4,
 ];
 
+/// Obliquity of J2000, radians, near which the obliquities of a few centuries stay, with its sine and cosine.
+const J2000_OBLIQUITY: f64 = Angle::from_arcsec(84_381.406).radians();
+const J2000_OBLIQUITY_SIN_COS: (f64, f64) = (0.397_776_969_112_605_96, 0.917_482_143_065_241_9);
+
+/// Sine and cosine of an angle `off` radians from one whose sine and cosine are known. Exact to the last digits for
+/// |off| below 0.01, at a tenth of the cost of a sine; the angles of ten centuries stay below 0.003.
+fn sin_cos_near((sin, cos): (f64, f64), off: f64) -> (f64, f64) {
+    let square = off * off;
+    let sin_off = off * (1.0 - square / 6.0 * (1.0 - square / 20.0));
+    let cos_off = 1.0 - square / 2.0 * (1.0 - square / 12.0 * (1.0 - square / 30.0));
+    (sin * cos_off + cos * sin_off, cos * cos_off - sin * sin_off)
+}
+
 /// Mean obliquity of the ecliptic, IAU 2006; good to 0.01" within six centuries of 2000.
 #[must_use]
 pub fn mean_obliquity(tt: Tt) -> Angle {
@@ -122,9 +135,10 @@ impl ReferenceFrame {
         let psi = arcsec(&PSI_BAR) + nutation.longitude;
         let obliquity = arcsec(&OBLIQUITY) + nutation.obliquity;
 
-        // The three turns written out: about z by gamma, about x by phi, about z by -psi.
-        let (sin_gamma, cos_gamma) = gamma.sin_cos();
-        let (sin_phi, cos_phi) = phi.sin_cos();
+        // The three turns written out: about z by gamma, about x by phi, about z by -psi. Only psi is large.
+        let (sin_gamma, cos_gamma) = sin_cos_near((0.0, 1.0), gamma.radians());
+        let (sin_phi, cos_phi) =
+            sin_cos_near(J2000_OBLIQUITY_SIN_COS, phi.radians() - J2000_OBLIQUITY);
         let (sin_psi, cos_psi) = psi.sin_cos();
         let first = Vec3::new(cos_gamma, sin_gamma, 0.0);
         let second = Vec3::new(-cos_phi * sin_gamma, cos_phi * cos_gamma, sin_phi);
@@ -150,7 +164,16 @@ impl ReferenceFrame {
         let icrs_pole = Vec3::new(-sin_psi * sin_phi, cos_psi * sin_phi, cos_phi);
         let ecliptic_spin =
             Vec3::new(0.0, 0.0, -psi_rate) + node * phi_rate + icrs_pole * gamma_rate;
-        Self::with_equator(ecliptic_from_icrs, obliquity, nutation, ecliptic_spin)
+        let tilt = sin_cos_near(
+            J2000_OBLIQUITY_SIN_COS,
+            obliquity.radians() - J2000_OBLIQUITY,
+        );
+        Self::with_equator(
+            ecliptic_from_icrs,
+            (obliquity, tilt),
+            nutation,
+            ecliptic_spin,
+        )
     }
 
     fn long_term(tt: Tt, nutation: Nutation) -> Self {
@@ -175,7 +198,7 @@ impl ReferenceFrame {
         let spin = precession / DAYS_PER_CENTURY + nutation.longitude_per_day.radians();
         Self::with_equator(
             ecliptic_from_icrs,
-            obliquity,
+            (obliquity, obliquity.sin_cos()),
             nutation,
             Vec3::new(0.0, 0.0, -spin),
         )
@@ -183,11 +206,10 @@ impl ReferenceFrame {
 
     fn with_equator(
         ecliptic_from_icrs: Mat3,
-        obliquity: Angle,
+        (obliquity, (sin, cos)): (Angle, (f64, f64)),
         nutation: Nutation,
         ecliptic_spin: Vec3,
     ) -> Self {
-        let (sin, cos) = obliquity.sin_cos();
         let [x, y, z] = ecliptic_from_icrs.rows;
         let tip = |v: Vec3| Vec3::new(v.x, cos * v.y - sin * v.z, sin * v.y + cos * v.z);
         let equatorial_from_icrs = Mat3 {

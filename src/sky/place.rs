@@ -216,9 +216,6 @@ impl Sky {
             position: barycentre.position + moon.position * moon_share,
             velocity: barycentre.velocity + moon.velocity * moon_share,
         };
-        // The Moon draws the Earth with a 170th of the Sun's pull: it counts in the rate of aberration.
-        let moon_pull = attraction(moon.position, GM_SUN / SUN_EARTH_RATIO / EARTH_MOON_RATIO);
-        let acceleration = attraction(sun.position - earth.position, GM_SUN) + moon_pull;
         Ok(Vantage {
             sky: self,
             instant,
@@ -226,8 +223,9 @@ impl Sky {
             frame,
             sun,
             moon,
+            earth,
             observer: earth,
-            acceleration,
+            spin_acceleration: Vec3::ZERO,
             horizon: None,
         })
     }
@@ -269,7 +267,7 @@ impl Sky {
         let icrs_from_true = vantage.frame.equatorial_from_icrs.transposed();
         vantage.observer.position += icrs_from_true * position;
         vantage.observer.velocity += icrs_from_true * velocity;
-        vantage.acceleration += icrs_from_true * spin.cross(velocity);
+        vantage.spin_acceleration = icrs_from_true * spin.cross(velocity);
         vantage.horizon = Some(Horizon {
             local_from_icrs: local_from_true * vantage.frame.equatorial_from_icrs,
             sidereal,
@@ -301,8 +299,12 @@ pub struct Vantage<'s> {
     frame: ReferenceFrame,
     sun: State,
     moon: State,
+    /// The Earth's centre.
+    earth: State,
+    /// The observer: the same, or a site on the turning Earth.
     observer: State,
-    acceleration: Vec3,
+    /// Of a site towards the Earth's axis.
+    spin_acceleration: Vec3,
     horizon: Option<Horizon>,
 }
 
@@ -326,12 +328,7 @@ impl Vantage<'_> {
         let (state, acceleration) = match body {
             Body::Sun => (self.sun, Vec3::ZERO),
             Body::Moon => {
-                let barycentre = self.sky.state(Target::EarthMoonBarycentre, self.tdb)?;
-                let share = EARTH_MOON_RATIO / (1.0 + EARTH_MOON_RATIO);
-                let state = State {
-                    position: barycentre.position + self.moon.position * share,
-                    velocity: barycentre.velocity + self.moon.velocity * share,
-                };
+                let state = self.earth + self.moon;
                 (
                     state,
                     attraction(self.sun.position - state.position, GM_SUN),
@@ -350,11 +347,11 @@ impl Vantage<'_> {
 
         let seen_after =
             |days: f64| geometric - state.velocity * days + acceleration * (0.5 * days * days);
-        let mut light_time = geometric.norm() / LIGHT_AU_PER_DAY;
-        // Each round leaves 1e-4 of the error before it (speed over the speed of light).
-        for _ in 0..3 {
-            light_time = seen_after(light_time).norm() / LIGHT_AU_PER_DAY;
-        }
+        // The body's own motion along the line of sight brings the first guess to 1e-8 of the light time; a round of
+        // iteration leaves 1e-4 (speed over the speed of light) of that.
+        let length = geometric.norm();
+        let guess = length / (LIGHT_AU_PER_DAY + geometric.dot(state.velocity) / length);
+        let light_time = seen_after(guess).norm() / LIGHT_AU_PER_DAY;
         let astrometric = seen_after(light_time);
         let distance = light_time * LIGHT_AU_PER_DAY;
         let direction = astrometric * (1.0 / distance);
@@ -373,7 +370,7 @@ impl Vantage<'_> {
             ),
         };
         let apparent = self.aberrate(deflected);
-        let mut place = Place {
+        Ok(Place {
             body,
             instant: self.instant,
             emission: self.tdb.plus_days(-light_time),
@@ -387,12 +384,15 @@ impl Vantage<'_> {
             heliocentric_now: state.position - self.sun.position,
             heliocentric_velocity_now: state.velocity - self.sun.velocity,
             apparent,
-            apparent_rate: Vec3::ZERO,
+            observer: ObserverMotion {
+                velocity: self.observer.velocity,
+                to_sun: self.sun.position - self.earth.position,
+                to_moon: self.moon.position,
+                spin_acceleration: self.spin_acceleration,
+            },
             frame: self.frame,
             cautions: self.sky.cautions(),
-        };
-        place.apparent_rate = self.aberration_rate(direction, place.direction_rate());
-        Ok(place)
+        })
     }
 
     /// The apparent direction, on ICRS axes, of something infinitely far in the (astrometric) direction given.
@@ -411,15 +411,6 @@ impl Vantage<'_> {
         let gamma_inverse = (1.0 - beta.dot(beta)).sqrt();
         let along = direction.dot(beta);
         (direction * gamma_inverse + beta * (1.0 + along / (1.0 + gamma_inverse))).unit()
-    }
-
-    /// Rate of the aberrated direction; first order in v/c, which leaves out 0.00004" a day.
-    fn aberration_rate(&self, u: Vec3, u_rate: Vec3) -> Vec3 {
-        let beta = self.observer.velocity * (1.0 / LIGHT_AU_PER_DAY);
-        let beta_rate = self.acceleration * (1.0 / LIGHT_AU_PER_DAY);
-        let along = u.dot(beta);
-        let along_rate = u_rate.dot(beta) + u.dot(beta_rate);
-        u_rate + beta_rate - u_rate * along - u * along_rate
     }
 
     /// Altitude (no refraction) and azimuth of an apparent direction on ICRS axes; `None` at the geocentre.
@@ -568,6 +559,24 @@ pub struct Horizontal {
     pub altitude: Angle,
 }
 
+/// What the rate of aberration depends on; worked out only when a rate is asked for.
+#[derive(Clone, Copy, Debug)]
+struct ObserverMotion {
+    velocity: Vec3,
+    /// From the Earth's centre.
+    to_sun: Vec3,
+    to_moon: Vec3,
+    spin_acceleration: Vec3,
+}
+
+impl ObserverMotion {
+    /// au/day^2. The Moon draws the Earth with a 170th of the Sun's pull, which counts at a greatest elongation.
+    fn acceleration(&self) -> Vec3 {
+        let gm_moon = GM_SUN / SUN_EARTH_RATIO / EARTH_MOON_RATIO;
+        attraction(self.to_sun, GM_SUN) + attraction(self.to_moon, gm_moon) + self.spin_acceleration
+    }
+}
+
 /// A body as an observer sees it at an instant.
 #[derive(Clone, Copy, Debug)]
 pub struct Place {
@@ -595,8 +604,7 @@ pub struct Place {
     pub heliocentric_velocity_now: Vec3,
     /// Apparent direction: light time, deflection, aberration; unit vector on ICRS axes.
     pub apparent: Vec3,
-    /// Rate of `apparent` (without that of the deflection, below 0.002" a day beyond 10 degrees from the Sun).
-    pub apparent_rate: Vec3,
+    observer: ObserverMotion,
     /// The axes of date.
     pub frame: ReferenceFrame,
     pub cautions: Cautions,
@@ -635,6 +643,18 @@ impl Place {
         across * (1.0 / self.distance_au)
     }
 
+    /// Rate of `apparent`, radians a day: without that of the deflection (below 0.002" a day beyond 10 degrees from the
+    /// Sun) and of second order in v/c (0.00004" a day).
+    #[must_use]
+    pub fn apparent_rate(&self) -> Vec3 {
+        let beta = self.observer.velocity * (1.0 / LIGHT_AU_PER_DAY);
+        let beta_rate = self.observer.acceleration() * (1.0 / LIGHT_AU_PER_DAY);
+        let (u, u_rate) = (self.direction, self.direction_rate());
+        let along = u.dot(beta);
+        let along_rate = u_rate.dot(beta) + u.dot(beta_rate);
+        u_rate + beta_rate - u_rate * along - u * along_rate
+    }
+
     /// Rate of [`Place::distance_au`], au a day.
     #[must_use]
     pub fn distance_rate(&self) -> f64 {
@@ -646,14 +666,16 @@ impl Place {
     pub fn equatorial_rate(&self) -> SphericalRate {
         let rate = self
             .frame
-            .equatorial_rate(self.apparent, self.apparent_rate);
+            .equatorial_rate(self.apparent, self.apparent_rate());
         SphericalRate::of(self.frame.equatorial_from_icrs * self.apparent, rate)
     }
 
     /// Rates of [`Place::ecliptic_of_date`], the turning of the axes included.
     #[must_use]
     pub fn ecliptic_rate(&self) -> SphericalRate {
-        let rate = self.frame.ecliptic_rate(self.apparent, self.apparent_rate);
+        let rate = self
+            .frame
+            .ecliptic_rate(self.apparent, self.apparent_rate());
         SphericalRate::of(self.frame.ecliptic_from_icrs * self.apparent, rate)
     }
 
@@ -694,7 +716,7 @@ impl Place {
             return Angle::ZERO;
         }
         let cosine_rate =
-            self.apparent_rate.dot(other.apparent) + self.apparent.dot(other.apparent_rate);
+            self.apparent_rate().dot(other.apparent) + self.apparent.dot(other.apparent_rate());
         Angle::from_radians(-cosine_rate / sine)
     }
 
