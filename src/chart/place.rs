@@ -95,9 +95,10 @@ impl Ground {
 
     /// Room around a free box, up to `most` points.
     pub fn room(&self, bounds: &Rect, most: f64) -> f64 {
-        let lines = self.lines.iter().map(|&(from, to, half)| {
-            geometry::rect_to_segment(bounds, from, to) - half
-        });
+        let lines = self
+            .lines
+            .iter()
+            .map(|&(from, to, half)| geometry::rect_to_segment(bounds, from, to) - half);
         let boxes = self.boxes.iter().map(|taken| {
             let apart = taken.nearest(bounds.centre());
             bounds.nearest(apart).distance(apart)

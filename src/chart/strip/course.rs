@@ -65,7 +65,11 @@ impl Course {
         let days = instant.days();
         let after = self.samples.partition_point(|spot| spot.days <= days);
         if after == self.samples.len() {
-            return self.samples.last().copied().filter(|last| last.days == days);
+            return self
+                .samples
+                .last()
+                .copied()
+                .filter(|last| last.days == days);
         }
         let before = after.checked_sub(1)?;
         let (from, to) = (self.samples.get(before)?, self.samples.get(after)?);

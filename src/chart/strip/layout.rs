@@ -61,7 +61,10 @@ impl StripRow {
     /// Where an ecliptic direction lies on the sheet; it may be outside the frame.
     #[must_use]
     pub fn point_of(&self, ecliptic: Vec3) -> Point {
-        self.point(ecliptic.longitude().degrees(), ecliptic.latitude().degrees())
+        self.point(
+            ecliptic.longitude().degrees(),
+            ecliptic.latitude().degrees(),
+        )
     }
 
     /// The place at a point of the sheet: longitude 0 to 360 and latitude, degrees.
@@ -70,7 +73,9 @@ impl StripRow {
         let from = point.minus(self.frame.centre());
         let east = if self.east_left { -from.x } else { from.x } / self.scale;
         (
-            Angle::from_degrees(self.longitude + east).wrapped().degrees(),
+            Angle::from_degrees(self.longitude + east)
+                .wrapped()
+                .degrees(),
             self.latitude - from.y / self.scale,
         )
     }
@@ -145,7 +150,11 @@ impl StripLayout {
         let height = row_height(count, &edge);
         let length = edge.width() / plan.scale;
         // A break's middle divides the labels of two rows.
-        let middles: Vec<f64> = plan.starts.iter().map(|start| start + length / 2.0).collect();
+        let middles: Vec<f64> = plan
+            .starts
+            .iter()
+            .map(|start| start + length / 2.0)
+            .collect();
         let borders: Vec<f64> = plan
             .starts
             .windows(2)
@@ -241,8 +250,8 @@ impl Extent {
         if extent.from > extent.to {
             (extent.from, extent.to) = (-LEAST_SPAN_DEGREES / 2.0, LEAST_SPAN_DEGREES / 2.0);
         }
-        let length = (extent.to - extent.from + 2.0 * SIDE_MARGIN_DEGREES)
-            .clamp(LEAST_SPAN_DEGREES, 360.0);
+        let length =
+            (extent.to - extent.from + 2.0 * SIDE_MARGIN_DEGREES).clamp(LEAST_SPAN_DEGREES, 360.0);
         let middle = (extent.from + extent.to) / 2.0;
         (extent.from, extent.to) = (middle - length / 2.0, middle + length / 2.0);
         extent
@@ -320,7 +329,11 @@ fn starts(extent: &Extent, length: f64) -> Vec<f64> {
             .filter(|&&(low, high)| low < end && high + 1.0 > end)
             .map(|&(low, _)| low - OVERLAP_DEGREES)
             .fold(plain, f64::min);
-        last = if next > last + length / 4.0 { next } else { plain };
+        last = if next > last + length / 4.0 {
+            next
+        } else {
+            plain
+        };
         starts.push(last);
     }
     starts
