@@ -4,7 +4,10 @@
 use super::geometry::{self, Point, Rect};
 
 /// Space kept between two labels, points.
-const LABEL_GAP: f64 = 1.5;
+const LABEL_GAP: f64 = 2.4;
+/// What a point of air around a label is worth, and how much of it counts, points.
+const AIR: f64 = 0.35;
+const MOST_AIR: f64 = 9.0;
 /// Space kept between a label and a line it must not touch, points.
 const LINE_GAP: f64 = 1.6;
 
@@ -48,11 +51,6 @@ impl Ground {
         }
     }
 
-    /// Ground that no label may take.
-    pub fn block(&mut self, bounds: Rect) {
-        self.boxes.push(bounds);
-    }
-
     /// A line that no label and no leader may touch.
     pub fn line(&mut self, from: Point, to: Point, half_width: f64) {
         self.lines.push((from, to, half_width));
@@ -69,20 +67,21 @@ impl Ground {
                 .boxes
                 .iter()
                 .any(|taken| taken.overlaps(&bounds.grown(LABEL_GAP)))
-            && !self.lines.iter().any(|&(from, to, half)| {
-                geometry::rect_to_segment(bounds, from, to) < half + LINE_GAP
-            })
+            && !self
+                .lines
+                .iter()
+                .any(|&(from, to, half)| is_near(bounds, from, to, half + LINE_GAP))
             && !self
                 .leaders
                 .iter()
-                .any(|&(from, to)| geometry::rect_to_segment(bounds, from, to) < LINE_GAP)
+                .any(|&(from, to)| is_near(bounds, from, to, LINE_GAP))
     }
 
     fn leader_is_clear(&self, from: Point, to: Point) -> bool {
         !self
             .boxes
             .iter()
-            .any(|taken| geometry::rect_to_segment(taken, from, to) < LABEL_GAP)
+            .any(|taken| is_near(taken, from, to, LABEL_GAP))
             && !self.lines.iter().any(|&(a, b, half)| {
                 geometry::crossing((from, to), (a, b)).is_some()
                     || geometry::distance_to_segment(to, a, b).0 < half + LINE_GAP
@@ -95,22 +94,28 @@ impl Ground {
 
     /// Room around a free box, up to `most` points.
     pub fn room(&self, bounds: &Rect, most: f64) -> f64 {
-        let lines = self
-            .lines
-            .iter()
-            .map(|&(from, to, half)| geometry::rect_to_segment(bounds, from, to) - half);
-        let boxes = self.boxes.iter().map(|taken| {
-            let apart = taken.nearest(bounds.centre());
-            bounds.nearest(apart).distance(apart)
+        let lines = self.lines.iter().fold(most, |least, &(from, to, half)| {
+            if is_beyond(bounds, from, to, least + half) {
+                least
+            } else {
+                least.min(geometry::rect_to_segment(bounds, from, to) - half)
+            }
         });
-        lines.chain(boxes).fold(most, f64::min).max(0.0)
+        let boxes = self.boxes.iter().map(|taken| {
+            let across = (taken.left - bounds.right).max(bounds.left - taken.right);
+            let up = (taken.top - bounds.bottom).max(bounds.top - taken.bottom);
+            libm::hypot(across.max(0.0), up.max(0.0))
+        });
+        boxes.fold(lines, f64::min).max(0.0)
     }
 
     /// Takes the cheapest free place among the offers.
     pub fn take(&mut self, offers: impl IntoIterator<Item = Offer>) -> Option<Taken> {
         let mut best: Option<(f64, Taken)> = None;
         for offer in offers {
-            if best.as_ref().is_some_and(|(cost, _)| offer.cost >= *cost)
+            if best
+                .as_ref()
+                .is_some_and(|(cost, _)| offer.cost - AIR * MOST_AIR >= *cost)
                 || !self.is_free(&offer.bounds)
             {
                 continue;
@@ -131,7 +136,7 @@ impl Ground {
                 .map(|dot| dot.2)
                 .sum();
             // Air around a label reads better than nearness to its point.
-            let cost = offer.cost + covered - 0.35 * self.room(&offer.bounds, 9.0);
+            let cost = offer.cost + covered - AIR * self.room(&offer.bounds, MOST_AIR);
             if best.as_ref().is_none_or(|(least, _)| cost < *least) {
                 best = Some((
                     cost,
@@ -147,6 +152,18 @@ impl Ground {
         self.leaders.extend(taken.leader);
         Some(taken)
     }
+}
+
+/// Whether a segment lies wholly beyond `reach` on one side of a rectangle: the quick answer for most.
+fn is_beyond(bounds: &Rect, from: Point, to: Point, reach: f64) -> bool {
+    from.x.max(to.x) < bounds.left - reach
+        || bounds.right + reach < from.x.min(to.x)
+        || from.y.max(to.y) < bounds.top - reach
+        || bounds.bottom + reach < from.y.min(to.y)
+}
+
+fn is_near(bounds: &Rect, from: Point, to: Point, reach: f64) -> bool {
+    !is_beyond(bounds, from, to, reach) && geometry::rect_to_segment(bounds, from, to) < reach
 }
 
 /// Offers around a point: in `directions` even directions beginning upward, at growing distances from it; those
@@ -171,12 +188,14 @@ pub(super) fn around(
             let reach = distance + along.x.abs() * width / 2.0 + along.y.abs() * height / 2.0;
             let centre = point.towards(along, reach);
             let bounds = Rect::around(centre, width, height);
+            let gap = bounds.nearest(point).distance(point);
             let off = square.map_or(0.0, |square| 1.0 - square.dot(along).abs());
             let start = bounds.nearest(point).minus(point).unit();
+            let led = gap > near;
             offers.push(Offer {
                 bounds,
-                cost: distance + 14.0 * off,
-                leader_from: (distance > near).then(|| point.towards(start, clear)),
+                cost: gap + 10.0 * off + if led { 6.0 } else { 0.0 },
+                leader_from: led.then(|| point.towards(start, clear)),
             });
         }
     }
@@ -209,7 +228,12 @@ mod tests {
     #[test]
     fn no_leader_runs_through_a_label_or_a_line() {
         let mut ground = Ground::new(Rect::new(0.0, 0.0, 100.0, 100.0));
-        ground.block(Rect::around(Point::new(50.0, 50.0), 10.0, 10.0));
+        let block = Offer {
+            bounds: Rect::around(Point::new(50.0, 50.0), 10.0, 10.0),
+            cost: 0.0,
+            leader_from: None,
+        };
+        assert!(ground.take([block]).is_some());
         ground.line(Point::new(0.0, 80.0), Point::new(100.0, 80.0), 1.0);
         let led = |from| Offer {
             bounds: Rect::around(Point::new(50.0, 20.0), 10.0, 8.0),

@@ -3,7 +3,7 @@
 //! Longitudes and latitudes are of the mean ecliptic and equinox of the middle of the season, so that stars stand
 //! still; tracks are astrometric. A path too long for one row of sky is laid out in several. Dates and names come in as
 //! text: this module makes no choice of time zone. The width of the track follows brightness on a fixed scale,
-//! proportional to the fourth root of the light or nearly so; stars follow one of their own.
+//! stars follow one of their own.
 
 mod course;
 mod furniture;
@@ -51,8 +51,8 @@ impl StripView {
 
     /// The layout that [`strip`] uses for this view.
     #[must_use]
-    pub fn layout(&self, season: &Season) -> StripLayout {
-        StripLayout::new(season, self, furniture::sky_area(self))
+    pub fn layout(&self, season: &Season, text: &StripText) -> StripLayout {
+        StripLayout::new(season, self, furniture::sky_area(self, text))
     }
 }
 
@@ -106,7 +106,7 @@ pub struct StripText {
 /// its scale are drawn, at their places of the frame's epoch.
 #[must_use]
 pub fn strip(season: &Season, stars: &[Star], text: &StripText, view: &StripView) -> Scene {
-    let layout = view.layout(season);
+    let layout = view.layout(season, text);
     let mut scene = Scene {
         width: view.width,
         height: view.height,
@@ -131,28 +131,33 @@ pub fn strip(season: &Season, stars: &[Star], text: &StripText, view: &StripView
             row,
             season,
             text,
+            marked: Vec::new(),
         };
         let named = painter.sky(stars);
+        painter.track(&subject);
         for course in &companions {
             painter.other(course, Role::Companion);
         }
         painter.other(&sun, Role::Sun);
-        painter.track(&subject);
         painter.events(&subject);
         painter.dates(&subject, DateRank::Month);
-        painter.sun_dates(&sun);
+        painter.other_dates(&sun, Role::Sun);
         for course in &companions {
             painter.body_name(course, Role::Companion);
         }
         painter.body_name(&sun, Role::Sun);
         painter.dates(&subject, DateRank::Day);
+        for course in &companions {
+            painter.other_dates(course, Role::Companion);
+        }
         painter.star_names(named);
+        painter.ecliptic_name();
         painter.constellations();
         furniture::edges(&mut scene, row);
     }
     if view.furniture {
         furniture::title_block(&mut scene, text);
-        furniture::key(&mut scene, season, &subject, &layout, &drawn);
+        furniture::key(&mut scene, season, text, &subject, &layout, &drawn);
         furniture::cautions(&mut scene, text);
     }
     scene.sort();
@@ -165,26 +170,26 @@ struct Drawn {
     glyphs: Vec<Glyph>,
     retrograde: bool,
     constellations: usize,
-    companions: bool,
 }
 
-/// Width of a track in points by magnitude: fixed, so that charts can be compared. One magnitude is a factor 1.29; the
-/// thinnest is that of magnitude 2.5, the thickest that of -4.7.
+/// Width of a track in points by magnitude: fixed, so that charts can be compared. A curve of our own that changes
+/// most between +2 and -3 and keeps Venus from being a bar and Neptune from being a hair.
 fn track_width(magnitude: f64) -> f64 {
-    (3.2 * libm::pow(10.0, -0.11 * magnitude)).clamp(1.7, 10.5)
+    1.5 + 5.3 / (1.0 + libm::pow(10.0, 0.3 * (magnitude + 0.8)))
 }
 
 /// The line of the Sun and of companions, points.
 const OTHER_WIDTH: f64 = 1.15;
 
-/// Radius of a star's dot in points by magnitude, on a row of that scale.
-fn star_radius(magnitude: f64) -> f64 {
-    (0.40 * libm::pow(10.0, 0.128 * (6.5 - magnitude))).min(4.2)
+/// Radius of a star's dot in points by magnitude, on a row of that scale in points a degree.
+fn star_radius(magnitude: f64, scale: f64) -> f64 {
+    let size = libm::pow(scale / 16.0, 0.3).clamp(0.8, 1.3);
+    (0.52 * libm::pow(10.0, 0.122 * (6.5 - magnitude)) * size).min(5.0)
 }
 
 /// The faintest stars drawn at a scale in points a degree.
 fn star_limit(scale: f64) -> f64 {
-    (4.3 + 1.65 * libm::log10(scale.max(1.0))).min(7.0)
+    (4.4 + 1.8 * libm::log10(scale.max(1.0))).min(7.0)
 }
 
 /// Dot of a star: colour as a hint of warmth, faint ones almost into the ground.
@@ -222,6 +227,8 @@ struct RowPainter<'a> {
     row: &'a StripRow,
     season: &'a Season,
     text: &'a StripText,
+    /// Marks of events on this row and the dates told beside them.
+    marked: Vec<(Point, Vec<String>)>,
 }
 
 impl RowPainter<'_> {
@@ -279,11 +286,11 @@ impl RowPainter<'_> {
             }
             let place = to_ecliptic * star.direction_at(self.season.frame.epoch);
             let at = self.row.point_of(place);
-            let radius = star_radius(star.magnitude);
+            let radius = star_radius(star.magnitude, self.row.scale);
             if !at.is_finite() || !frame.grown(-radius - 0.5).contains(at) {
                 continue;
             }
-            self.ground.dot(at, radius, 2.5 * radius * radius);
+            self.ground.dot(at, radius, 2.0 + 4.0 * radius * radius);
             self.scene.add(
                 MarkId::Star(star.hip),
                 Layer::Stars,
@@ -306,73 +313,94 @@ impl RowPainter<'_> {
 
     /// The path of the Sun or of a companion: a fine line, a dot at the first of each month.
     fn other(&mut self, course: &Course, role: Role) {
-        let points: Vec<Point> = course
-            .dense(self.row.scale)
-            .iter()
-            .map(|spot| self.point(spot))
-            .collect();
         let ribbon: Vec<RibbonPoint> = course
             .dense(self.row.scale)
             .iter()
-            .zip(&points)
-            .map(|(spot, &at)| RibbonPoint {
-                at,
+            .map(|spot| RibbonPoint {
+                at: self.point(spot),
                 width: OTHER_WIDTH,
                 paint: Paint::of(role),
                 index: spot.index,
             })
             .collect();
-        for part in self.clipped(&points) {
-            for pair in part.windows(2) {
-                if let &[from, to] = pair {
-                    self.ground.line(from, to, OTHER_WIDTH / 2.0);
-                }
-            }
-        }
-        for part in self.clip_ribbon(&ribbon) {
-            self.drawn.companions |= role == Role::Companion;
-            self.scene.add(
-                MarkId::Track(course.body),
-                Layer::Others,
-                Shape::Ribbon(part),
-            );
-        }
-        for date in self
-            .text
-            .dates
-            .iter()
-            .filter(|date| date.rank == DateRank::Month)
-        {
-            let Some(spot) = course.at(date.instant) else {
+        for (index, spot) in self.month_spots(course) {
+            let centre = self.point(&spot);
+            // Under the subject's track it could not be read.
+            if self.ground.room(&Rect::around(centre, 3.0, 3.0), 1.0) < 0.9 {
                 continue;
+            }
+            let id = MarkId::OtherTick {
+                body: course.body,
+                date: index,
             };
-            let at = self.point(&spot);
-            if self.row.frame.grown(-3.0).contains(at) {
-                let id = MarkId::TrackPoint {
-                    body: course.body,
-                    index: spot.index,
+            let radius: f64 = if role == Role::Sun {
+                let stroke = Stroke::of(role, 0.6);
+                let ring = Shape::Ring {
+                    centre,
+                    radius: 3.2,
+                    stroke,
                 };
                 self.scene.add(
                     id,
                     Layer::Others,
                     Shape::Disc {
-                        centre: at,
-                        radius: 1.7,
-                        fill: Paint::of(role),
+                        centre,
+                        radius: 3.2,
+                        fill: Paint::of(Role::Plate),
                     },
                 );
-                if role == Role::Sun {
-                    self.scene.add(
-                        id,
-                        Layer::Others,
-                        Shape::Ring {
-                            centre: at,
-                            radius: 3.2,
-                            stroke: Stroke::of(role, 0.6),
-                        },
-                    );
-                    self.ground.line(at, at, 3.4);
-                }
+                self.scene.add(id, Layer::Others, ring);
+                3.6
+            } else {
+                1.7
+            };
+            let fill = Paint::of(role);
+            self.scene.add(
+                id,
+                Layer::Others,
+                Shape::Disc {
+                    centre,
+                    radius: radius.min(1.7),
+                    fill,
+                },
+            );
+            self.ground.line(centre, centre, radius);
+        }
+        for part in self.clip_ribbon(&ribbon) {
+            self.keep_off(&part);
+            // Under the dots.
+            self.scene.add(
+                MarkId::Track(course.body),
+                Layer::OtherPaths,
+                Shape::Ribbon(part),
+            );
+        }
+    }
+
+    /// Where a body stands at the first of each month, with the date's place in the list.
+    fn month_spots(&self, course: &Course) -> Vec<(usize, Spot)> {
+        let frame = self.row.frame.grown(-3.0);
+        self.text
+            .dates
+            .iter()
+            .enumerate()
+            .filter(|(_, date)| date.rank == DateRank::Month)
+            .filter_map(|(index, date)| Some((index, course.at(date.instant)?)))
+            .filter(|(_, spot)| frame.contains(self.point(spot)))
+            .collect()
+    }
+
+    /// Keeps labels off a path.
+    fn keep_off(&mut self, path: &[RibbonPoint]) {
+        const STEP: f64 = 4.0;
+        let Some(mut from) = path.first().copied() else {
+            return;
+        };
+        for (index, &to) in path.iter().enumerate() {
+            if from.at.distance(to.at) >= STEP || index + 1 == path.len() {
+                self.ground
+                    .line(from.at, to.at, from.width.max(to.width) / 2.0);
+                from = to;
             }
         }
     }
@@ -433,12 +461,7 @@ impl RowPainter<'_> {
             })
             .collect();
         for part in self.clip_ribbon(&ribbon) {
-            for pair in part.windows(2) {
-                if let &[from, to] = pair {
-                    self.ground
-                        .line(from.at, to.at, from.width.max(to.width) / 2.0);
-                }
-            }
+            self.keep_off(&part);
             // Companions, boundaries and the ecliptic keep a little off.
             self.scene.add(
                 id,
@@ -508,7 +531,17 @@ impl RowPainter<'_> {
                 DateRank::Month => date.rank == DateRank::Month,
                 _ => date.rank != DateRank::Month && !crowded,
             };
+            let at_mark = self
+                .marked
+                .iter()
+                .find(|(mark, _)| mark.distance(at) < marks::RADIUS + 1.6);
             if !wanted || !self.row.frame.grown(-2.0).contains(at) {
+                continue;
+            }
+            // The mark of an event stands for a tick beneath it, its words for the same date.
+            if at_mark
+                .is_some_and(|(_, dates)| rank == DateRank::Day || dates.contains(&date.label))
+            {
                 continue;
             }
             let normal = self.along(course, &spot).turned();
@@ -523,22 +556,18 @@ impl RowPainter<'_> {
             self.line(MarkId::Tick(index), Layer::Ticks, vec![start, end], stroke);
             let label = match date.rank {
                 DateRank::Month => {
-                    Label::new(at, date.label.as_str(), Font::SansStrong, 8.8, Role::Ink)
+                    Label::new(at, date.label.as_str(), Font::SansStrong, 9.6, Role::Ink)
                 }
                 DateRank::Day => {
-                    Label::new(at, date.label.as_str(), Font::Sans, 7.3, Role::FaintInk)
+                    Label::new(at, date.label.as_str(), Font::Sans, 7.6, Role::FaintInk)
                 }
                 DateRank::Fine => continue,
             };
             if !self.row.owns(spot.longitude) {
                 continue;
             }
-            let most = if date.rank == DateRank::Month {
-                64.0
-            } else {
-                20.0
-            };
-            let offers = beside(at, normal, reach, &label, most);
+            let may_lead = date.rank == DateRank::Month;
+            let offers = beside(at, normal, reach, &label, may_lead);
             if let Some(taken) = self.ground.take(offers) {
                 self.label(MarkId::Tick(index), label, taken, Role::FaintInk);
             }
@@ -562,24 +591,61 @@ impl RowPainter<'_> {
         }
     }
 
-    /// Dates of the Sun at the first of each month.
-    fn sun_dates(&mut self, sun: &Course) {
-        for (index, date) in self.text.dates.iter().enumerate() {
-            if date.rank != DateRank::Month {
-                continue;
-            }
-            let Some(spot) = sun.at(date.instant) else {
+    /// Dates of another body at the first of each month.
+    fn other_dates(&mut self, course: &Course, role: Role) {
+        for (index, spot) in self.month_spots(course) {
+            let Some(date) = self.text.dates.get(index) else {
                 continue;
             };
-            let at = self.point(&spot);
-            if !self.row.owns(spot.longitude) || !self.row.frame.contains(at) {
+            let id = MarkId::OtherTick {
+                body: course.body,
+                date: index,
+            };
+            let is_drawn = self.scene.marks.iter().any(|mark| mark.id == id);
+            if !is_drawn || !self.row.owns(spot.longitude) {
                 continue;
             }
-            let label = Label::new(at, date.label.as_str(), Font::Sans, 6.8, Role::Sun);
-            let offers = around(at, size(&label), 4.0, &[4.6, 6.0], 8, 99.0, None);
+            let near = if role == Role::Sun { 5.4 } else { 3.6 };
+            let label = Label::new(Point::default(), date.label.as_str(), Font::Sans, 6.8, role);
+            let at = self.point(&spot);
+            let offers = around(at, size(&label), 0.0, &[near, near + 1.6], 8, 99.0, None);
             if let Some(taken) = self.ground.take(offers) {
-                self.label(MarkId::Tick(index), label, taken, Role::Sun);
+                self.label(id, label, taken, role);
             }
+        }
+    }
+
+    /// The ecliptic's own name, where there is room along it.
+    fn ecliptic_name(&mut self) {
+        let frame = self.row.frame;
+        let y = self.row.point(self.row.longitude, 0.0).y;
+        if !frame.grown(-12.0).contains(Point::new(frame.centre().x, y)) {
+            return;
+        }
+        let label = Label::new(
+            Point::default(),
+            "ecliptic",
+            Font::SerifItalic,
+            8.6,
+            Role::FaintInk,
+        )
+        .spaced(0.8);
+        let (width, height) = size(&label);
+        let mut offers = Vec::new();
+        let mut x = frame.left + 8.0 + width / 2.0;
+        while x < frame.right - width / 2.0 {
+            for (side, cost) in [(-1.0, 0.0), (1.0, 4.0)] {
+                let centre = Point::new(x, y + side * (height / 2.0 + 2.5));
+                offers.push(Offer {
+                    bounds: Rect::around(centre, width, height),
+                    cost: cost + 0.02 * (x - frame.left),
+                    leader_from: None,
+                });
+            }
+            x += 12.0;
+        }
+        if let Some(taken) = self.ground.take(offers) {
+            self.label(MarkId::Scale, label, taken, Role::FaintInk);
         }
     }
 
@@ -670,14 +736,18 @@ impl RowPainter<'_> {
             );
         }
         for group in &groups {
+            self.marked.extend(group.first().map(|first| {
+                let dates = group.iter().map(|told| told.date.clone()).collect();
+                (first.at, dates)
+            }));
             self.tell(group);
         }
     }
 
     /// The words of events that stand at one place.
     fn tell(&mut self, group: &[Told]) {
-        const SIZE: f64 = 8.8;
-        const LEADING: f64 = 11.4;
+        const SIZE: f64 = 9.6;
+        const LEADING: f64 = 12.4;
         let Some(chief) = group.iter().min_by_key(|told| told.glyph) else {
             return;
         };
@@ -767,7 +837,7 @@ impl RowPainter<'_> {
 
     /// Wide pale names, each where its constellation has most room on the row.
     fn constellations(&mut self) {
-        const STEP: f64 = 9.0;
+        const STEP: f64 = 12.0;
         let frame = self.row.frame;
         let icrs_from_ecliptic = self.season.frame.ecliptic_from_icrs.transposed();
         let row = self.row;
@@ -819,8 +889,12 @@ impl RowPainter<'_> {
                 .filter_map(|&(_, centre)| {
                     let (width, height) = size(&label);
                     let bounds = Rect::around(centre, width, height);
-                    let corners = bounds.grown(3.0).corners();
-                    corners
+                    let around = bounds.grown(4.0);
+                    if !frame.grown(-6.0).holds(&around) {
+                        return None;
+                    }
+                    around
+                        .corners()
                         .into_iter()
                         .chain([bounds.centre()])
                         .all(|corner| at(corner) == constellation)
@@ -858,19 +932,22 @@ fn size(label: &Label) -> (f64, f64) {
 }
 
 /// Places for a date beside its tick, on both sides; those farther off with a leader.
-fn beside(at: Point, normal: Point, reach: f64, label: &Label, most: f64) -> Vec<Offer> {
+fn beside(at: Point, normal: Point, reach: f64, label: &Label, may_lead: bool) -> Vec<Offer> {
     const STEPS: [f64; 10] = [2.2, 4.0, 7.0, 11.0, 16.0, 22.0, 29.0, 38.0, 49.0, 62.0];
     const SHIFTS: [f64; 9] = [0.0, 4.0, -4.0, 9.0, -9.0, 16.0, -16.0, 26.0, -26.0];
     let (width, height) = size(label);
     let along = normal.turned();
     let mut offers = Vec::new();
-    for step in STEPS.into_iter().filter(|step| *step <= most) {
+    for step in STEPS {
         for shift in SHIFTS {
             for out in [normal, normal.towards(normal, -2.0)] {
                 let end = at.towards(out, reach);
                 let support = out.x.abs() * width / 2.0 + out.y.abs() * height / 2.0;
                 let centre = end.towards(out, step + support).towards(along, shift);
                 let led = step > 5.0 || shift.abs() > 10.0;
+                if led && !may_lead {
+                    continue;
+                }
                 offers.push(Offer {
                     bounds: Rect::around(centre, width, height),
                     cost: step + 0.5 * shift.abs(),

@@ -13,18 +13,22 @@ use super::marks::{self, Glyph, signed};
 use super::{Drawn, StripText, StripView, star_limit, star_paint, star_radius, track_width};
 
 /// Blank edge of the sheet, points.
-const MARGIN: f64 = 28.0;
+const MARGIN: f64 = 24.0;
+/// Left and right of title and key: in line with the edge of the sky, points.
+const SIDE: f64 = MARGIN + 23.0;
 /// Height of the title block, points.
 const TITLE_HEIGHT: f64 = 38.0;
 /// Height of the key, points.
 const KEY_HEIGHT: f64 = 40.0;
-/// Height of the cautions, points: two lines.
-const CAUTION_HEIGHT: f64 = 22.0;
+/// Size and line height of the cautions, and how many lines there may be.
+const CAUTION_SIZE: f64 = 7.8;
+const CAUTION_LEADING: f64 = 10.5;
+const CAUTION_LINES: usize = 3;
 /// Width of the measured edge, points.
 const EDGE: f64 = 3.0;
 
 /// Where the sky may lie on the sheet, the numbers along its edges included.
-pub(super) fn sky_area(view: &StripView) -> Rect {
+pub(super) fn sky_area(view: &StripView, text: &StripText) -> Rect {
     let sheet = Rect::new(0.0, 0.0, view.width, view.height);
     if !view.furniture {
         return sheet;
@@ -33,7 +37,8 @@ pub(super) fn sky_area(view: &StripView) -> Rect {
         MARGIN,
         MARGIN + TITLE_HEIGHT,
         (view.width - MARGIN).max(MARGIN + 60.0),
-        (view.height - MARGIN - KEY_HEIGHT - CAUTION_HEIGHT).max(MARGIN + TITLE_HEIGHT + 60.0),
+        (view.height - MARGIN - KEY_HEIGHT - caution_height(view.width, text))
+            .max(MARGIN + TITLE_HEIGHT + 60.0),
     )
 }
 
@@ -191,17 +196,22 @@ pub(super) fn edges(scene: &mut Scene, row: &StripRow) {
     let number_step = if row.scale >= 14.0 { 2 } else { 5 };
     for degree in degrees(row.latitude, row.half_height(), number_step) {
         let y = row.point(row.longitude, f64::from(degree)).y;
-        let label = Label::new(
-            Point::new(outer.left - 3.0, y + 2.5),
-            format!("{}°", signed(f64::from(degree), 0)),
-            Font::Sans,
-            7.2,
-            Role::FaintInk,
-        )
-        .aligned(Align::End);
-        let bounds = label.bounds();
-        if outer.top <= bounds.top && bounds.bottom <= outer.bottom {
-            write(scene, MarkId::Scale, label);
+        for (x, align) in [
+            (outer.left - 3.0, Align::End),
+            (outer.right + 3.0, Align::Start),
+        ] {
+            let label = Label::new(
+                Point::new(x, y + 2.5),
+                format!("{}°", signed(f64::from(degree), 0)),
+                Font::Sans,
+                7.2,
+                Role::FaintInk,
+            )
+            .aligned(align);
+            let bounds = label.bounds();
+            if outer.top <= bounds.top && bounds.bottom <= outer.bottom {
+                write(scene, MarkId::Scale, label);
+            }
         }
     }
 }
@@ -215,7 +225,7 @@ fn edge_x(row: &StripRow, degree: f64, half: f64) -> f64 {
 /// Title at the left, place and span at the right.
 pub(super) fn title_block(scene: &mut Scene, text: &StripText) {
     let base = MARGIN + 21.0;
-    let right = scene.width - MARGIN;
+    let right = scene.width - SIDE;
     let place = fitted(
         &text.place,
         Font::SansStrong,
@@ -231,14 +241,14 @@ pub(super) fn title_block(scene: &mut Scene, text: &StripText) {
         Role::FaintInk,
     );
     let taken = place.width().max(span.width());
-    let room = (right - MARGIN - taken - 24.0).max(40.0);
+    let room = (right - SIDE - taken - 24.0).max(40.0);
     // A long title is set smaller before it is shortened.
     let size = [28.0, 24.0, 20.0, 17.0, 14.0]
         .into_iter()
         .find(|size| text::width(&text.title, Font::SerifItalic, *size, 0.0) <= room)
         .unwrap_or(14.0);
     let mut title = fitted(&text.title, Font::SerifItalic, size, room, Role::Ink);
-    title.anchor = Point::new(MARGIN, base + 1.0);
+    title.anchor = Point::new(SIDE, base + 1.0);
     write(scene, MarkId::Sheet, title);
     for (mut label, y) in [(place, base - 11.0), (span, base + 1.0)] {
         label.anchor = Point::new(right, y);
@@ -256,39 +266,50 @@ fn fitted(words: &str, font: Font, size: f64, room: f64, role: Role) -> Label {
     Label::new(Point::default(), shown, font, size, role)
 }
 
-/// The cautions under the key, broken into lines.
+/// The cautions under the key.
 pub(super) fn cautions(scene: &mut Scene, text: &StripText) {
-    const SIZE: f64 = 7.6;
-    const LEADING: f64 = 10.0;
-    if text.cautions.is_empty() {
-        return;
+    let room = scene.width - 2.0 * SIDE;
+    let lines = caution_lines(scene.width, text);
+    for (index, words) in lines.iter().rev().enumerate() {
+        let mut label = fitted(words, Font::Sans, CAUTION_SIZE, room, Role::Caution);
+        let base = scene.height - MARGIN - CAUTION_LEADING * index as f64;
+        label.anchor = Point::new(SIDE, base);
+        write(scene, MarkId::Sheet, label);
     }
-    let room = scene.width - 2.0 * MARGIN;
-    let all = text.cautions.join("  ");
+}
+
+fn caution_height(width: f64, text: &StripText) -> f64 {
+    match caution_lines(width, text).len() {
+        0 => 0.0,
+        lines => 6.0 + CAUTION_LEADING * lines as f64,
+    }
+}
+
+/// The cautions one after the other, broken into lines.
+fn caution_lines(width: f64, text: &StripText) -> Vec<String> {
+    let room = width - 2.0 * SIDE;
     let mut lines: Vec<String> = Vec::new();
-    for word in all.split_whitespace() {
+    for word in text
+        .cautions
+        .iter()
+        .flat_map(|caution| caution.split_whitespace())
+    {
         let longer = lines
             .last()
             .map(|last| format!("{last} {word}"))
-            .filter(|longer| text::width(longer, Font::Sans, SIZE, 0.0) <= room);
+            .filter(|longer| text::width(longer, Font::Sans, CAUTION_SIZE, 0.0) <= room);
         match (longer, lines.last_mut()) {
             (Some(longer), Some(last)) => *last = longer,
             _ => lines.push(word.to_owned()),
         }
     }
-    let most = 3;
-    if lines.len() > most {
-        lines.truncate(most);
+    if lines.len() > CAUTION_LINES {
+        lines.truncate(CAUTION_LINES);
         if let Some(last) = lines.last_mut() {
             last.push_str(" …");
         }
     }
-    let first = scene.height - MARGIN + 8.0 - LEADING * (lines.len() - 1) as f64;
-    for (index, words) in lines.iter().enumerate() {
-        let mut label = fitted(words, Font::Sans, SIZE, room, Role::Caution);
-        label.anchor = Point::new(MARGIN, first + LEADING * index as f64);
-        write(scene, MarkId::Sheet, label);
-    }
+    lines
 }
 
 /// An entry of the key: drawn into a scene of its own from (0, 0), then moved to its place.
@@ -311,6 +332,7 @@ fn reading(at: Point, words: impl Into<String>) -> Label {
 pub(super) fn key(
     scene: &mut Scene,
     season: &Season,
+    text: &StripText,
     subject: &Course,
     layout: &StripLayout,
     drawn: &Drawn,
@@ -323,14 +345,14 @@ pub(super) fn key(
         entries.push(star_sizes(row.scale));
         entries.push(compass(row.east_left));
     }
-    let room = scene.width - 2.0 * MARGIN;
+    let room = scene.width - 2.0 * SIDE;
     let total: f64 = entries.iter().map(|entry| entry.width).sum();
     let gaps = (entries.len().max(2) - 1) as f64;
-    let gap = ((room - total) / gaps).clamp(6.0, 60.0);
+    let gap = ((room - total) / gaps).clamp(6.0, 200.0);
     // On a narrow sheet the key is drawn smaller rather than cut.
     let shrink = (room / (total + gap * gaps)).min(1.0);
-    let top = scene.height - MARGIN - CAUTION_HEIGHT - KEY_HEIGHT + 6.0;
-    let mut x = MARGIN;
+    let top = scene.height - MARGIN - caution_height(scene.width, text) - KEY_HEIGHT + 7.0;
+    let mut x = SIDE;
     for entry in entries {
         for mark in entry.scene.marks {
             let shape = placed(mark.shape, Point::new(x, top), shrink);
@@ -569,7 +591,7 @@ fn star_sizes(scale: f64) -> Entry {
             Layer::Frame,
             Shape::Disc {
                 centre: Point::new(x, FIRST_Y - 2.0),
-                radius: star_radius(magnitude),
+                radius: star_radius(magnitude, scale),
                 fill: star_paint(magnitude, None),
             },
         );

@@ -12,7 +12,7 @@ use super::StripView;
 /// Sky kept on either side of the path, degrees.
 const SIDE_MARGIN_DEGREES: f64 = 3.5;
 /// The least length of a strip, degrees: an outer planet's loop with its neighbourhood.
-const LEAST_SPAN_DEGREES: f64 = 30.0;
+const LEAST_SPAN_DEGREES: f64 = 20.0;
 /// Room kept above and below the path for labels, points.
 const LABEL_ROOM: f64 = 44.0;
 /// What two rows share at a break, degrees.
@@ -23,6 +23,8 @@ const ROW_GAP: f64 = 27.0;
 const MOST_ROWS: usize = 5;
 /// What another row must gain in scale to be worth it.
 const ROW_GAIN: f64 = 1.15;
+/// A strip up to this length stays in one row, degrees.
+const ONE_ROW_DEGREES: f64 = 60.0;
 
 /// A piece of sky shown on the strip.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -134,7 +136,7 @@ impl StripLayout {
             return StripLayout { rows: vec![row] };
         }
         let extent = Extent::of(season);
-        let plan = (1..=MOST_ROWS)
+        let plan = (1..=extent.most_rows())
             .map(|rows| Plan::new(rows, &extent, &edge))
             .reduce(|best, next| {
                 if next.scale > best.scale * ROW_GAIN {
@@ -180,7 +182,7 @@ impl StripLayout {
                 StripRow {
                     frame: Rect::new(edge.left, top, edge.right, top + height),
                     longitude: Angle::from_degrees(middle).wrapped().degrees(),
-                    latitude: extent.middle_latitude(),
+                    latitude: extent.middle_latitude(height / plan.scale / 2.0),
                     scale: plan.scale,
                     east_left: view.east_left,
                     own: (
@@ -201,7 +203,7 @@ impl StripLayout {
 }
 
 const EDGE_LEFT: f64 = 26.0;
-const EDGE_RIGHT: f64 = 6.0;
+const EDGE_RIGHT: f64 = 26.0;
 const EDGE_TOP: f64 = 6.0;
 const EDGE_BOTTOM: f64 = 17.0;
 
@@ -226,9 +228,8 @@ impl Extent {
         let mut extent = Extent {
             from: f64::INFINITY,
             to: f64::NEG_INFINITY,
-            // The ecliptic is always on it.
-            south: -0.8,
-            north: 0.8,
+            south: f64::INFINITY,
+            north: f64::NEG_INFINITY,
             loops: Vec::new(),
         };
         let mut turning = false;
@@ -249,6 +250,7 @@ impl Extent {
         }
         if extent.from > extent.to {
             (extent.from, extent.to) = (-LEAST_SPAN_DEGREES / 2.0, LEAST_SPAN_DEGREES / 2.0);
+            (extent.south, extent.north) = (0.0, 0.0);
         }
         let length =
             (extent.to - extent.from + 2.0 * SIDE_MARGIN_DEGREES).clamp(LEAST_SPAN_DEGREES, 360.0);
@@ -257,8 +259,19 @@ impl Extent {
         extent
     }
 
-    fn middle_latitude(&self) -> f64 {
-        (self.south + self.north) / 2.0
+    const fn most_rows(&self) -> usize {
+        if self.to - self.from <= ONE_ROW_DEGREES {
+            1
+        } else {
+            MOST_ROWS
+        }
+    }
+
+    /// The middle of the path, moved so far that the ecliptic stays on the row.
+    fn middle_latitude(&self, half_height: f64) -> f64 {
+        let middle = (self.south + self.north) / 2.0;
+        let most = half_height * 0.8;
+        middle.clamp(-most, most)
     }
 }
 
@@ -289,7 +302,10 @@ struct Plan {
 impl Plan {
     fn new(rows: usize, extent: &Extent, edge: &Rect) -> Self {
         let room = (row_height(rows, edge) - 2.0 * LABEL_ROOM).max(10.0);
-        let by_height = room / (extent.north - extent.south);
+        // The ecliptic has to fit too, the path's labels need no room on its side.
+        let high = (extent.north - extent.south).max(0.5);
+        let off = extent.north.abs().max(extent.south.abs());
+        let by_height = (room / high).min((room + LABEL_ROOM) / off.max(high));
         let whole = extent.to - extent.from;
         // The shortest row length with which that many rows cover the path.
         let (mut short, mut long) = (whole / rows as f64, whole);
