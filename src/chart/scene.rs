@@ -32,8 +32,10 @@ pub enum MarkId {
     BodyName(Body),
     /// An event of the season, by its place in the season's list.
     Event(usize),
-    /// A date on the path, by its place in the list handed in.
+    /// A date on the subject's path, by its place in the list handed in.
     Tick(usize),
+    /// A date on the path of another body.
+    OtherTick { body: Body, date: usize },
 }
 
 /// What lies over what; later ones cover earlier ones.
@@ -46,7 +48,9 @@ pub enum Layer {
     Boundaries,
     Scale,
     Stars,
-    /// Companions and the Sun.
+    /// Paths of companions and of the Sun.
+    OtherPaths,
+    /// Dates on them.
     Others,
     Track,
     Ticks,
@@ -69,6 +73,7 @@ impl Layer {
             Layer::Boundaries => "boundaries",
             Layer::Scale => "scale",
             Layer::Stars => "stars",
+            Layer::OtherPaths => "other-paths",
             Layer::Others => "others",
             Layer::Track => "track",
             Layer::Ticks => "ticks",
