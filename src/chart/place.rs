@@ -4,7 +4,7 @@
 use super::geometry::{self, Point, Rect};
 
 /// Space kept between two labels, points.
-const LABEL_GAP: f64 = 2.4;
+const LABEL_GAP: f64 = 3.2;
 /// What a point of air around a label is worth, and how much of it counts, points.
 const AIR: f64 = 0.35;
 const MOST_AIR: f64 = 9.0;
@@ -77,13 +77,13 @@ impl Ground {
                 .any(|&(from, to)| is_near(bounds, from, to, LINE_GAP))
     }
 
-    fn leader_is_clear(&self, from: Point, to: Point) -> bool {
+    fn leader_is_clear(&self, from: Point, to: Point, may_cross: bool) -> bool {
         !self
             .boxes
             .iter()
             .any(|taken| is_near(taken, from, to, LABEL_GAP))
             && !self.lines.iter().any(|&(a, b, half)| {
-                geometry::crossing((from, to), (a, b)).is_some()
+                !may_cross && geometry::crossing((from, to), (a, b)).is_some()
                     || geometry::distance_to_segment(to, a, b).0 < half + LINE_GAP
             })
             && !self
@@ -111,6 +111,16 @@ impl Ground {
 
     /// Takes the cheapest free place among the offers.
     pub fn take(&mut self, offers: impl IntoIterator<Item = Offer>) -> Option<Taken> {
+        self.find(offers, false)
+    }
+
+    /// The same for what must not be left out: where there is no other place, the leader may cross a line.
+    pub fn take_across(&mut self, offers: &[Offer]) -> Option<Taken> {
+        self.find(offers.iter().copied(), false)
+            .or_else(|| self.find(offers.iter().copied(), true))
+    }
+
+    fn find(&mut self, offers: impl IntoIterator<Item = Offer>, may_cross: bool) -> Option<Taken> {
         let mut best: Option<(f64, Taken)> = None;
         for offer in offers {
             if best
@@ -124,7 +134,7 @@ impl Ground {
                 let around = offer.bounds.grown(1.0);
                 (from, around.nearest(from))
             });
-            if leader.is_some_and(|(from, to)| !self.leader_is_clear(from, to)) {
+            if leader.is_some_and(|(from, to)| !self.leader_is_clear(from, to, may_cross)) {
                 continue;
             }
             let covered: f64 = self

@@ -94,6 +94,8 @@ pub struct StripText {
     pub place: String,
     /// The span in words, as in "November 2026 to May 2027".
     pub span: String,
+    /// What the dates along the track mean, as in "dates at 21:00 CET, a tick every 5 days"; may be empty.
+    pub date_note: String,
     /// Dates along the tracks.
     pub dates: Vec<StripDate>,
     /// The date of each event of the season, as it is to be printed, in the season's order.
@@ -139,8 +141,12 @@ pub fn strip(season: &Season, stars: &[Star], text: &StripText, view: &StripView
             painter.other(course, Role::Companion);
         }
         painter.other(&sun, Role::Sun);
-        painter.events(&subject);
+        painter.keep_off_ecliptic();
+        let groups = painter.events(&subject);
         painter.dates(&subject, DateRank::Month);
+        for group in &groups {
+            painter.tell(group);
+        }
         painter.other_dates(&sun, Role::Sun);
         for course in &companions {
             painter.body_name(course, Role::Companion);
@@ -377,6 +383,14 @@ impl RowPainter<'_> {
         }
     }
 
+    /// Keeps labels off the ecliptic.
+    fn keep_off_ecliptic(&mut self) {
+        let frame = self.row.frame;
+        let y = self.row.point(self.row.longitude, 0.0).y;
+        let (from, to) = (Point::new(frame.left, y), Point::new(frame.right, y));
+        self.ground.line(from, to, 0.3);
+    }
+
     /// Where a body stands at the first of each month, with the date's place in the list.
     fn month_spots(&self, course: &Course) -> Vec<(usize, Spot)> {
         let frame = self.row.frame.grown(-3.0);
@@ -481,6 +495,34 @@ impl RowPainter<'_> {
             }
             self.strand(id, part.get(begun..).unwrap_or_default());
         }
+        self.arrow(id, &ribbon);
+    }
+
+    /// A head at the end of the path: which way it is travelled.
+    fn arrow(&mut self, id: MarkId, ribbon: &[RibbonPoint]) {
+        let [.., before, last] = ribbon else { return };
+        let along = last.at.minus(before.at).unit();
+        let (long, half) = (last.width * 1.2 + 4.0, last.width / 2.0 + 2.0);
+        let tip = last.at.towards(along, long);
+        if !self.row.frame.grown(-2.0).contains(tip) || along.length() == 0.0 {
+            return;
+        }
+        let foot = last.at.towards(along, -0.3);
+        let across = along.turned();
+        self.ground.line(last.at, tip, half);
+        self.scene.add(
+            id,
+            Layer::Track,
+            Shape::Area {
+                rings: vec![vec![
+                    tip,
+                    foot.towards(across, half),
+                    foot.towards(across, -half),
+                ]],
+                fill: last.paint,
+                edge: None,
+            },
+        );
     }
 
     fn strand(&mut self, id: MarkId, points: &[RibbonPoint]) {
@@ -568,7 +610,12 @@ impl RowPainter<'_> {
             }
             let may_lead = date.rank == DateRank::Month;
             let offers = beside(at, normal, reach, &label, may_lead);
-            if let Some(taken) = self.ground.take(offers) {
+            let taken = if may_lead {
+                self.ground.take_across(&offers)
+            } else {
+                self.ground.take(offers)
+            };
+            if let Some(taken) = taken {
                 self.label(MarkId::Tick(index), label, taken, Role::FaintInk);
             }
         }
@@ -673,8 +720,8 @@ impl RowPainter<'_> {
         }
     }
 
-    /// The subject's events: marks on the track, words beside them.
-    fn events(&mut self, course: &Course) {
+    /// The subject's events: marks on the track. Hands back what is to be told beside them.
+    fn events(&mut self, course: &Course) -> Vec<Vec<Told>> {
         let mut groups: Vec<Vec<Told>> = Vec::new();
         for (index, event) in self.season.events.iter().enumerate() {
             let Some((glyph, words)) = marks::told(event.kind) else {
@@ -740,8 +787,8 @@ impl RowPainter<'_> {
                 let dates = group.iter().map(|told| told.date.clone()).collect();
                 (first.at, dates)
             }));
-            self.tell(group);
         }
+        groups
     }
 
     /// The words of events that stand at one place.
@@ -772,7 +819,7 @@ impl RowPainter<'_> {
         let height = LEADING * (group.len() - 1) as f64
             + (Font::Sans.ascent() + Font::Sans.descent()) * SIZE;
         let distances = [
-            7.0, 10.0, 14.0, 18.0, 24.0, 30.0, 38.0, 48.0, 60.0, 75.0, 95.0, 120.0,
+            7.0, 10.0, 14.0, 18.0, 24.0, 30.0, 38.0, 48.0, 60.0, 75.0, 95.0, 120.0, 150.0, 190.0,
         ];
         let offers = around(
             chief.at,
@@ -783,7 +830,7 @@ impl RowPainter<'_> {
             8.0,
             Some(chief.square),
         );
-        let Some(taken) = self.ground.take(offers) else {
+        let Some(taken) = self.ground.take_across(&offers) else {
             return;
         };
         self.leader(MarkId::Event(chief.index), taken, Role::FaintInk);
@@ -819,7 +866,7 @@ impl RowPainter<'_> {
                 halo: 0.9,
                 ..Label::new(star.at, star.name, Font::SerifItalic, 9.2, Role::FaintInk).spaced(0.5)
             };
-            let near = star.radius + 1.4;
+            let near = star.radius + 2.2;
             let offers = around(
                 star.at,
                 size(&label),

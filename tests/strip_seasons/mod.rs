@@ -176,6 +176,7 @@ pub fn text(season: &Season, title: &str, span: &str) -> StripText {
         title: title.to_owned(),
         place: "Hollow Tor".to_owned(),
         span: span.to_owned(),
+        date_note: "dates at 0h UTC, a tick every 5 days".to_owned(),
         event_dates: season
             .events
             .iter()

@@ -240,7 +240,14 @@ pub(super) fn title_block(scene: &mut Scene, text: &StripText) {
         scene.width * 0.4,
         Role::FaintInk,
     );
-    let taken = place.width().max(span.width());
+    let note = fitted(
+        &text.date_note,
+        Font::Sans,
+        7.6,
+        scene.width * 0.4,
+        Role::FaintInk,
+    );
+    let taken = place.width().max(span.width()).max(note.width());
     let room = (right - SIDE - taken - 24.0).max(40.0);
     // A long title is set smaller before it is shortened.
     let size = [28.0, 24.0, 20.0, 17.0, 14.0]
@@ -250,9 +257,11 @@ pub(super) fn title_block(scene: &mut Scene, text: &StripText) {
     let mut title = fitted(&text.title, Font::SerifItalic, size, room, Role::Ink);
     title.anchor = Point::new(SIDE, base + 1.0);
     write(scene, MarkId::Sheet, title);
-    for (mut label, y) in [(place, base - 11.0), (span, base + 1.0)] {
+    for (mut label, y) in [(place, base - 13.0), (span, base - 1.0), (note, base + 9.5)] {
         label.anchor = Point::new(right, y);
-        write(scene, MarkId::Sheet, label.aligned(Align::End));
+        if !label.text.is_empty() {
+            write(scene, MarkId::Sheet, label.aligned(Align::End));
+        }
     }
 }
 

@@ -12,7 +12,7 @@ use super::StripView;
 /// Sky kept on either side of the path, degrees.
 const SIDE_MARGIN_DEGREES: f64 = 3.5;
 /// The least length of a strip, degrees: an outer planet's loop with its neighbourhood.
-const LEAST_SPAN_DEGREES: f64 = 20.0;
+const LEAST_SPAN_DEGREES: f64 = 16.0;
 /// Room kept above and below the path for labels, points.
 const LABEL_ROOM: f64 = 44.0;
 /// What two rows share at a break, degrees.
