@@ -4,16 +4,16 @@ use std::io::{BufWriter, stdout};
 
 use crate::season::close::{Limits, close_approaches};
 use crate::season::events::{Kinds, events};
-use crate::season::horizon::{HorizonEvent, HorizonKind, horizon_events};
-use crate::season::{Event, EventKind, EventValue, Other, Span};
+use crate::season::horizon::{HorizonKind, horizon_events};
+use crate::season::{EventKind, Span};
 use crate::sheet::table::{Cell, TableWriter};
+use crate::sheet::tables::{EVENT_COLUMNS, event_row, horizon_row};
 use crate::sky::place::Sky;
 use crate::sky::stars::{Star, StarCatalogue};
-use crate::sky::{Body, Cautions, Tt};
+use crate::sky::{Body, Tt};
 
-use super::places::utc_tenths;
 use super::progress::Progress;
-use super::words::{self, InstantWord, SiteWord, julian_date_text};
+use super::words::{self, InstantWord, SiteWord};
 use super::{CliError, Format};
 
 /// Print events: oppositions, conjunctions, stations, elongations, nearest and brightest, rise and set.
@@ -49,9 +49,6 @@ pub struct Options {
     format: Format,
 }
 
-const COLUMNS: &[&str] = &[
-    "body", "kind", "jd_tt", "utc", "value", "value_is", "caution",
-];
 /// The span is worked through in pieces of so many days, so that memory stays flat.
 const PIECE_DAYS: f64 = 400.0;
 
@@ -143,7 +140,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     };
     let mut table = TableWriter::new(
         BufWriter::new(stdout().lock()),
-        COLUMNS,
+        EVENT_COLUMNS,
         options.format.into(),
     )?;
     let mut progress = Progress::new("events");
@@ -159,7 +156,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         let part = Span { from, to };
         let mut rows: Vec<Row> = Vec::new();
         for event in events(&sky, &bodies, wanted.planetary, part)? {
-            rows.push(planetary_row(&sky, &event));
+            rows.push(Row { instant: event.instant, cells: event_row(&sky, &event) });
         }
         for (index, &body) in bodies.iter().enumerate() {
             if wanted.close && body != Body::Sun {
@@ -170,7 +167,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
                     .collect();
                 for event in close_approaches(&sky, body, &others, &stars, Limits::default(), part)?
                 {
-                    rows.push(planetary_row(&sky, &event));
+                    rows.push(Row { instant: event.instant, cells: event_row(&sky, &event) });
                 }
             }
             if let Some(SiteWord(site)) = &options.site
@@ -178,7 +175,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             {
                 let found = horizon_events(&sky, site, body, &wanted.horizon, part)?;
                 seen[index] |= !found.is_empty();
-                rows.extend(found.iter().map(|event| horizon_row(&sky, event)));
+                rows.extend(found.iter().map(|event| Row { instant: event.instant, cells: horizon_row(&sky, event) }));
             }
         }
         rows.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()));
@@ -219,78 +216,4 @@ fn bright_zodiac_stars(epoch: Tt) -> Result<Vec<&'static Star>, CliError> {
                 < 12.0
         })
         .collect())
-}
-
-fn row(
-    sky: &Sky,
-    words: [&str; 2],
-    instant: Tt,
-    value: Cell,
-    value_is: String,
-    cautions: Cautions,
-) -> Row {
-    let cautions = cautions.and(sky.tables().delta_t(instant).cautions());
-    let [body, kind] = words;
-    let cells = vec![
-        Cell::text(body),
-        Cell::text(kind),
-        Cell::Digits(julian_date_text(instant, 8)),
-        Cell::text(utc_tenths(sky, instant)),
-        value,
-        Cell::text(value_is),
-        Cell::text(cautions.to_string()),
-    ];
-    Row { instant, cells }
-}
-
-fn planetary_row(sky: &Sky, event: &Event) -> Row {
-    let (value, value_is) = match event.value {
-        EventValue::Longitude(angle) => (Cell::Number(angle.degrees(), 6), String::from("lon_deg")),
-        EventValue::RightAscension(angle) => {
-            (Cell::Number(angle.degrees(), 6), String::from("ra_deg"))
-        }
-        EventValue::Elongation(angle) => {
-            (Cell::Number(angle.degrees(), 6), String::from("elong_deg"))
-        }
-        EventValue::DistanceAu(distance) => (Cell::Number(distance, 9), String::from("dist_au")),
-        EventValue::Magnitude(magnitude) => (Cell::Number(magnitude, 3), String::from("magnitude")),
-        EventValue::Separation(angle) => {
-            let partner = match &event.with {
-                Some(Other::Body(body)) => body.word().to_owned(),
-                Some(Other::Star(name)) => name.to_lowercase().replace(' ', "_"),
-                None => String::from("nothing"),
-            };
-            (
-                Cell::Number(angle.degrees(), 6),
-                format!("separation_deg_from_{partner}"),
-            )
-        }
-        EventValue::Constellation(name) => (Cell::text(name), String::from("constellation")),
-    };
-    row(
-        sky,
-        [event.body.word(), event.kind.word()],
-        event.instant,
-        value,
-        value_is,
-        event.cautions,
-    )
-}
-
-fn horizon_row(sky: &Sky, event: &HorizonEvent) -> Row {
-    let value_is = if event.kind == HorizonKind::UpperTransit {
-        "altitude_deg"
-    } else {
-        "azimuth_deg"
-    };
-    let value = Cell::Number(event.value.degrees(), 6);
-    let words = [event.body.word(), event.kind.word()];
-    row(
-        sky,
-        words,
-        event.instant,
-        value,
-        String::from(value_is),
-        sky.cautions(),
-    )
 }

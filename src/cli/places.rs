@@ -3,18 +3,14 @@
 use std::io::{BufWriter, Read, stdout};
 use std::path::PathBuf;
 
-use crate::season::horizon::Threshold;
-use crate::sheet::table::{Cell, TableWriter};
-use crate::sky::calendar::{Precision, utc_text};
-use crate::sky::constellations::Constellation;
-use crate::sky::light::{MarsTerms, magnitude};
-use crate::sky::physical::equatorial_diameter;
-use crate::sky::place::{Place, Sky, SkyError, Vantage};
-use crate::sky::refraction::apparent_from_true;
-use crate::sky::{Angle, Body, Caution, Site, Tt};
+use crate::scenario::DEFAULT_SUN_DISTANCE;
+use crate::sheet::table::TableWriter;
+use crate::sheet::tables::{PLACE_COLUMNS, place_row};
+use crate::sky::Tt;
+use crate::sky::place::{Sky, SkyError};
 
 use super::progress::Progress;
-use super::words::{self, InstantWord, SiteWord, StepWord, julian_date_text};
+use super::words::{self, InstantWord, SiteWord, StepWord};
 use super::{CliError, Format};
 
 /// Print places of bodies: coordinates, distances, elongation, phase, magnitude.
@@ -60,28 +56,6 @@ pub struct Options {
     format: Format,
 }
 
-const COLUMNS: &[&str] = &[
-    "body",
-    "utc",
-    "jd_tt",
-    "ra_deg",
-    "dec_deg",
-    "lon_deg",
-    "lat_deg",
-    "distance_au",
-    "sun_distance_au",
-    "elongation_deg",
-    "phase_angle_deg",
-    "lit_fraction",
-    "diameter_arcsec",
-    "magnitude",
-    "constellation",
-    "altitude_deg",
-    "apparent_altitude_deg",
-    "azimuth_deg",
-    "caution",
-];
-
 /// Largest file of instants that is read: two million of them.
 const LARGEST_FILE: u64 = 64 << 20;
 
@@ -100,9 +74,9 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             None => sky.geocentre(instant)?,
         };
         for &body in &bodies {
-            let cells = row(sky, &vantage, site, body)?;
+            let cells = place_row(sky, &vantage, site, body, DEFAULT_SUN_DISTANCE)?;
             if let Some(sink) = sink.take() {
-                table = Some(TableWriter::new(sink, COLUMNS, options.format.into())?);
+                table = Some(TableWriter::new(sink, PLACE_COLUMNS, options.format.into())?);
             }
             if let Some(table) = &mut table {
                 table.row(&cells)?;
@@ -147,7 +121,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         Some(table) => table.finish().map(drop)?,
         None => {
             if let Some(sink) = sink {
-                TableWriter::new(sink, COLUMNS, options.format.into())?.finish()?;
+                TableWriter::new(sink, PLACE_COLUMNS, options.format.into())?.finish()?;
             }
         }
     }
@@ -226,82 +200,4 @@ impl Skies {
             jd: instant.julian_date(),
         })
     }
-}
-
-fn row(
-    sky: &Sky,
-    vantage: &Vantage<'_>,
-    site: Option<&Site>,
-    body: Body,
-) -> Result<Vec<Cell>, SkyError> {
-    let place = vantage.place(body)?;
-    let sun = vantage.place(Body::Sun)?;
-    let geometry = place.geometry();
-    let light = magnitude(&geometry, MarsTerms::Include);
-    let equatorial = place.equatorial_of_date();
-    let ecliptic = place.ecliptic_of_date();
-    let elongation = place.separation(&sun);
-    let seen = vantage.horizontal(place.apparent);
-    let instant = vantage.instant();
-    let is_sun = body == Body::Sun;
-    let cautions = place
-        .cautions
-        .and(light.cautions)
-        .and(sky.tables().delta_t(instant).cautions())
-        .with_if(sun_is_near(vantage, &sun, elongation), Caution::SunNear);
-    let unless_sun = |value: f64| if is_sun { None } else { Some(value) };
-    Ok(vec![
-        Cell::text(body.word()),
-        Cell::text(utc_words(sky, instant)),
-        Cell::Digits(julian_date_text(instant, 9)),
-        Cell::Number(equatorial.longitude.degrees(), 8),
-        Cell::Number(equatorial.latitude.degrees(), 8),
-        Cell::Number(ecliptic.longitude.degrees(), 8),
-        Cell::Number(ecliptic.latitude.degrees(), 8),
-        Cell::Number(place.distance_au, 10),
-        Cell::number(unless_sun(geometry.sun_distance_au()), 10),
-        Cell::Number(elongation.degrees(), 7),
-        Cell::number(unless_sun(geometry.phase_angle().degrees()), 7),
-        Cell::number(unless_sun(geometry.lit_fraction()), 7),
-        Cell::Number(equatorial_diameter(&geometry).arcsec(), 5),
-        Cell::Number(light.value, 3),
-        Cell::text(Constellation::at_icrs(place.direction).abbreviation()),
-        Cell::number(seen.map(|seen| seen.altitude.degrees()), 7),
-        Cell::number(
-            seen.zip(site)
-                .map(|(seen, site)| apparent_from_true(seen.altitude, &site.air).degrees()),
-            7,
-        ),
-        Cell::number(seen.map(|seen| seen.azimuth.degrees()), 7),
-        Cell::text(cautions.to_string()),
-    ])
-}
-
-/// Within 20 degrees of a Sun that is up, or, seen from no particular place, may be up.
-fn sun_is_near(vantage: &Vantage<'_>, sun: &Place, elongation: Angle) -> bool {
-    const NEAR: Angle = Angle::from_degrees(20.0);
-    let sun_up = match vantage.horizontal(sun.apparent) {
-        Some(seen) => seen.altitude > Threshold::RiseSet.altitude_of(sun),
-        None => true,
-    };
-    elongation < NEAR && sun_up
-}
-
-/// The instant in UTC (before 1972 UT1), to the second where it falls on one, else to the millisecond.
-fn utc_words(sky: &Sky, instant: Tt) -> String {
-    let utc = sky.tables().utc_from_tt(instant);
-    let seconds = (utc.days().fract() * 86_400.0).abs();
-    let whole = (seconds - seconds.round()).abs() < 5e-4;
-    let precision = if whole {
-        Precision::Second
-    } else {
-        Precision::Decimals(3)
-    };
-    utc_text(utc, precision).unwrap_or_else(|error| error.to_string())
-}
-
-/// The instant in UTC with tenths of a second, as tables of events print it.
-pub(super) fn utc_tenths(sky: &Sky, instant: Tt) -> String {
-    let utc = sky.tables().utc_from_tt(instant);
-    utc_text(utc, Precision::Decimals(1)).unwrap_or_else(|error| error.to_string())
 }

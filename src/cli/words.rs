@@ -56,17 +56,6 @@ fn julian_date(text: &str) -> Result<Tt, String> {
     Ok(Tt::from_days((whole - J2000_JD) + fraction))
 }
 
-/// The Julian Date of an instant with so many decimals, more than one `f64` of it would hold.
-#[must_use]
-pub fn julian_date_text(tt: Tt, decimals: u32) -> String {
-    let scale = 10_i64.pow(decimals);
-    let whole = tt.days().floor();
-    let steps = ((tt.days() - whole) * scale as f64).round() as i64;
-    let days = whole as i64 + J2000_JD as i64 + steps / scale;
-    let width = decimals as usize;
-    format!("{days}.{:0width$}", steps % scale)
-}
-
 /// A step of time: `1d`, `6h`, `10min`, `30s`.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct StepWord {
@@ -176,6 +165,7 @@ pub fn bodies(text: &str) -> Result<Vec<Body>, String> {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::sheet::words::julian_date_text;
 
     #[test]
     fn julian_dates_keep_their_decimals() {

@@ -11,6 +11,7 @@ mod checked;
 mod error;
 pub mod files;
 mod nearest;
+mod plan;
 mod skyline;
 mod v1;
 pub mod version;
@@ -24,6 +25,7 @@ pub use checked::{NotOneLine, OutOfRange};
 pub use error::ScenarioError;
 use files::FileError;
 pub use skyline::{SkylineError, SkylineOrigin, SkylineSource};
+pub use plan::{Plan, PlanError};
 pub use version::NEWEST_VERSION;
 pub use zone::{LocalTime, UnknownZone, Zone};
 
