@@ -2,7 +2,7 @@
 //!
 //! Planets after Mallama and Hilton 2018, *Astronomy and Computing* 25, 10 (arXiv:1808.01973), with the true Sun and not
 //! the barycentre; the paper's own test rows come out within 0.0005 mag. The Moon by the phase law that goes with
-//! Krisciunas and Schaefer 1991, *PASP* 103, 1033 (within 0.02 mag of JPL's values from 5 to 110 degrees of phase). No
+//! Krisciunas and Schaefer 1991, *PASP* 103, 1033 (within 0.02 mag of four values of JPL). No
 //! extinction by air. Vectors are ICRS, au; instants TDB. The formulas for Neptune depend on the year.
 //!
 //! Outside the range a formula was made for the value stays finite and joins on where the paper allows it, and carries
@@ -131,12 +131,11 @@ fn polynomial<const N: usize>(coefficients: [f64; N], x: f64) -> f64 {
 /// Phase law of Krisciunas and Schaefer 1991, scaled from the mean distance of 384 400 km. Flagged beyond 150 degrees,
 /// where the measurements behind it end (from memory). It leaves out the surge within a few degrees of full.
 fn moon(phase_deg: f64) -> Flagged<f64> {
-    const MEAN_DISTANCE_AU: f64 = 384_400.0 / AU_KM;
-    // 5 log10 of the mean distance: what brings the law to 1 au.
-    let to_one_au = 5.0 * libm::log10(MEAN_DISTANCE_AU);
+    /// 5 log10 of that distance in au: what brings the law to 1 au.
+    const MEAN_DISTANCE_MAG: f64 = -12.950_710_165_245_855;
     let square = phase_deg * phase_deg;
     flagged_outside(
-        -12.73 + 0.026 * phase_deg + 4e-9 * square * square - to_one_au,
+        -12.73 + 0.026 * phase_deg + 4e-9 * square * square - MEAN_DISTANCE_MAG,
         phase_deg > 150.0,
     )
 }
@@ -382,6 +381,12 @@ mod tests {
         assert!(with_rings.cautions.is_empty());
         let globe = saturn_globe_beyond(169.8958);
         check(globe, 9.026035315474, 10.1321497654765, 5.206);
+    }
+
+    #[test]
+    fn mean_distance_of_the_moon_is_what_its_constant_says() {
+        let full_moon_at_mean_distance = moon(0.0).value + 5.0 * libm::log10(384_400.0 / AU_KM);
+        assert!((full_moon_at_mean_distance + 12.73).abs() < 1e-12);
     }
 
     #[test]

@@ -48,8 +48,9 @@ pub fn north_pole(body: Body, at: Tdb) -> Option<Vec3> {
                     + 0.000_926 * cos_e,
             )
         }
-        Body::Saturn => (40.589 - 0.036 * t, 83.537 - 0.004 * t),
-        Body::Uranus => (257.311, -15.175),
+        // Worked out once, as magnitudes ask for these two again and again.
+        Body::Saturn => return Some((SATURN_POLE + SATURN_POLE_DRIFT * t).unit()),
+        Body::Uranus => return Some(URANUS_POLE),
         Body::Neptune => {
             let (sin_n, cos_n) = angle(357.85, 52.316).sin_cos();
             (299.36 + 0.70 * sin_n, 43.46 - 0.51 * cos_n)
@@ -60,6 +61,21 @@ pub fn north_pole(body: Body, at: Tdb) -> Option<Vec3> {
         Angle::from_degrees(declination_deg),
     ))
 }
+
+/// Right ascension 40.589 - 0.036 T, declination 83.537 - 0.004 T degrees at J2000, and its rate a century; as a straight
+/// line 0.0025 degrees off after 30 centuries.
+const SATURN_POLE: Vec3 = Vec3::new(
+    0.085_478_831_861_071_7,
+    0.073_235_757_877_528_9,
+    0.993_644_751_946_977,
+);
+const SATURN_POLE_DRIFT: Vec3 = Vec3::new(9.869_431e-5, -8.574_17e-6, -7.858_280e-6);
+/// Right ascension 257.311, declination -15.175 degrees.
+const URANUS_POLE: Vec3 = Vec3::new(
+    -0.211_999_581_537_798_55,
+    -0.941_559_157_289_512_4,
+    -0.261_768_085_816_551_4,
+);
 
 /// Polar radius in km, from the same report; the equatorial one is [`Body::radius_km`].
 #[must_use]
@@ -82,15 +98,14 @@ pub struct SubLatitudes {
     pub sun: Angle,
 }
 
-/// Planetographic latitudes under observer and Sun, north positive (for Mars and Jupiter the almanac's DE and DS).
-/// Zero for the Moon, whose pole is not modelled here.
+/// Planetographic latitudes under observer and Sun, north positive. Zero for the Moon, whose pole is not modelled here.
 #[must_use]
 pub fn planetographic_latitudes(geometry: &Geometry) -> SubLatitudes {
     let axis_ratio = polar_radius_km(geometry.body) / geometry.body.radius_km();
     sub_latitudes(geometry, axis_ratio * axis_ratio)
 }
 
-/// Planetocentric latitudes under observer and Sun, north positive. Zero for the Moon.
+/// Planetocentric latitudes under observer and Sun, north positive: DE and DS of Mars and Jupiter. Zero for the Moon.
 #[must_use]
 pub fn planetocentric_latitudes(geometry: &Geometry) -> SubLatitudes {
     sub_latitudes(geometry, 1.0)
@@ -288,7 +303,7 @@ pub fn greatest_defect_position_angle(geometry: &Geometry, frame_from_icrs: &Mat
     (bright_limb_position_angle(geometry, frame_from_icrs) + Angle::HALF_TURN).wrapped()
 }
 
-/// Angle under which the equatorial radius is seen: to the limb as the eye touches it, not to the centre plane. 90 degrees
+/// Angle under which the equatorial radius is seen: half the angle between lines of sight that touch the limb. 90 degrees
 /// from inside the body.
 #[must_use]
 pub fn semidiameter(body: Body, distance_au: f64) -> Angle {

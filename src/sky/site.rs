@@ -1,6 +1,7 @@
 //! A place on Earth.
 
 use super::Angle;
+use super::refraction::Air;
 
 /// A place on the WGS84 ellipsoid with the air above it.
 #[derive(Clone, Debug, PartialEq)]
@@ -14,10 +15,8 @@ pub struct Site {
     pub elevation_m: f64,
     /// Metres above the surrounding ground or sea: sets the dip of the true horizon.
     pub height_above_surroundings_m: f64,
-    /// Pressure in hPa, for refraction.
-    pub pressure_hpa: f64,
-    /// Temperature in degrees Celsius, for refraction.
-    pub temperature_c: f64,
+    /// Pressure and temperature, for refraction.
+    pub air: Air,
     /// Extinction in the V band, magnitudes per airmass.
     pub extinction_mag: f64,
 }
