@@ -196,7 +196,7 @@ fn random_case(round: usize, draws: &mut Draws) -> Case {
     });
     let chance = |value: f64| Some(Probability::new(value, "forecast").unwrap());
     let forecast = Forecast {
-        tonight: if round % 5 == 0 {
+        tonight: if round.is_multiple_of(5) {
             chance([0.0, 1.0, 0.6][draws.below(3)])
         } else {
             None
@@ -208,7 +208,7 @@ fn random_case(round: usize, draws: &mut Draws) -> Case {
         },
     };
     let weather = weather(odds, draws.between(0.0, 0.6));
-    let frames = if round % 3 == 0 {
+    let frames = if round.is_multiple_of(3) {
         vec![mark(after(today(), -2), -1.0)]
     } else {
         Vec::new()

@@ -197,10 +197,10 @@ fn nights_of(plan: &Plan, candidates: &[Candidate]) -> Vec<Vec<Mark>> {
 #[test]
 fn dates_are_the_best_of_all_choices() {
     let mut draws = Draws(11);
-    for round in 0..60 {
+    for round in 0..60_usize {
         let nights = 11;
         let mut candidates = season(nights, &mut draws);
-        if round % 3 == 0 {
+        if round.is_multiple_of(3) {
             // A second spell in one night.
             let spell = candidates[2];
             candidates.insert(
@@ -222,7 +222,7 @@ fn dates_are_the_best_of_all_choices() {
             reserve_rule: RULES[round % 3],
             reserves: draws.below(3),
             evenness: draws.between(0.0, 4.0),
-            fill: if round % 7 == 0 {
+            fill: if round.is_multiple_of(7) {
                 0.0
             } else {
                 draws.between(0.3, 2.0)
@@ -264,12 +264,12 @@ fn dates_are_the_best_of_all_choices() {
 #[test]
 fn chances_are_those_of_all_weathers() {
     let mut draws = Draws(5);
-    for round in 0..40 {
+    for round in 0..40_usize {
         let nights = 13;
         let candidates = season(nights, &mut draws);
         let known = KnownSky {
             night: after(today(), -3),
-            sky: if round % 2 == 0 {
+            sky: if round.is_multiple_of(2) {
                 SkyState::Clear
             } else {
                 SkyState::Cloud
@@ -284,7 +284,11 @@ fn chances_are_those_of_all_weathers() {
             )
             .unwrap();
         let frames = [mark(after(today(), -1), -0.2)];
-        let frames: &[Mark] = if round % 3 == 0 { &frames } else { &[] };
+        let frames: &[Mark] = if round.is_multiple_of(3) {
+            &frames
+        } else {
+            &[]
+        };
         let request = PickRequest {
             frames,
             reserve_rule: RULES[round % 3],
