@@ -1,5 +1,6 @@
 //! What is handed out: a scene as SVG or PNG. Every output draws the scene's own shapes; none measures or places.
 
+mod font_subset;
 mod png;
 mod svg;
 
