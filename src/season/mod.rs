@@ -2,8 +2,26 @@
 //!
 //! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
 
+pub mod advice;
+pub mod close;
+mod compute;
+mod conditions;
+mod constellation_walk;
+pub mod events;
+pub mod horizon;
+pub mod log;
+mod loops;
+pub mod outlook;
+pub mod picks;
+mod search;
+mod track;
 mod types;
+pub mod weather;
 
+pub use compute::{next_season, season};
+pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
+pub use loops::{loops, synodic_days};
+pub use track::{strip_frame, track, track_step_days};
 pub use types::{
     Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing,
     TrackPoint,

@@ -61,10 +61,83 @@ pub enum EventKind {
     GreatestBrightness,
     /// Minimum of the distance from the Sun's centre.
     Perihelion,
-    /// The apparent place passes into a constellation.
+    /// The astrometric place passes into a constellation (the boundaries stand among the stars).
     ConstellationEntry,
     /// Minimum of the angle to another planet, a bright star or the Moon.
     CloseApproach,
+}
+
+impl EventKind {
+    pub const ALL: [EventKind; 18] = [
+        EventKind::Conjunction,
+        EventKind::InferiorConjunction,
+        EventKind::SuperiorConjunction,
+        EventKind::Opposition,
+        EventKind::QuadratureEast,
+        EventKind::QuadratureWest,
+        EventKind::StationRetrograde,
+        EventKind::StationDirect,
+        EventKind::RaStationRetrograde,
+        EventKind::RaStationDirect,
+        EventKind::GreatestElongationEast,
+        EventKind::GreatestElongationWest,
+        EventKind::ClosestApproach,
+        EventKind::ClosestApproachLightTime,
+        EventKind::GreatestBrightness,
+        EventKind::Perihelion,
+        EventKind::ConstellationEntry,
+        EventKind::CloseApproach,
+    ];
+
+    /// The word used in tables and on the command line.
+    #[must_use]
+    pub const fn word(self) -> &'static str {
+        match self {
+            EventKind::Conjunction => "conjunction",
+            EventKind::InferiorConjunction => "inferior_conjunction",
+            EventKind::SuperiorConjunction => "superior_conjunction",
+            EventKind::Opposition => "opposition",
+            EventKind::QuadratureEast => "quadrature_east",
+            EventKind::QuadratureWest => "quadrature_west",
+            EventKind::StationRetrograde => "station_retrograde",
+            EventKind::StationDirect => "station_direct",
+            EventKind::RaStationRetrograde => "ra_station_retrograde",
+            EventKind::RaStationDirect => "ra_station_direct",
+            EventKind::GreatestElongationEast => "greatest_elongation_east",
+            EventKind::GreatestElongationWest => "greatest_elongation_west",
+            EventKind::ClosestApproach => "closest_approach",
+            EventKind::ClosestApproachLightTime => "closest_approach_lighttime",
+            EventKind::GreatestBrightness => "greatest_brightness",
+            EventKind::Perihelion => "perihelion",
+            EventKind::ConstellationEntry => "constellation_entry",
+            EventKind::CloseApproach => "close_approach",
+        }
+    }
+
+    /// What happens, in words for people.
+    #[must_use]
+    pub const fn phrase(self) -> &'static str {
+        match self {
+            EventKind::Conjunction => "conjunction with the Sun",
+            EventKind::InferiorConjunction => "inferior conjunction",
+            EventKind::SuperiorConjunction => "superior conjunction",
+            EventKind::Opposition => "opposition",
+            EventKind::QuadratureEast => "quadrature, evening side",
+            EventKind::QuadratureWest => "quadrature, morning side",
+            EventKind::StationRetrograde => "station in longitude, turns back (westward)",
+            EventKind::StationDirect => "station in longitude, turns forward (eastward)",
+            EventKind::RaStationRetrograde => "station in right ascension, turns back (westward)",
+            EventKind::RaStationDirect => "station in right ascension, turns forward (eastward)",
+            EventKind::GreatestElongationEast => "greatest elongation, evening",
+            EventKind::GreatestElongationWest => "greatest elongation, morning",
+            EventKind::ClosestApproach => "nearest to the Earth",
+            EventKind::ClosestApproachLightTime => "nearest by light time",
+            EventKind::GreatestBrightness => "brightest",
+            EventKind::Perihelion => "perihelion",
+            EventKind::ConstellationEntry => "enters a constellation",
+            EventKind::CloseApproach => "close approach",
+        }
+    }
 }
 
 /// The number that belongs to an event.

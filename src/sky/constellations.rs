@@ -38,19 +38,25 @@ const B1875_FROM_ICRS: Mat3 = Mat3::from_rows([
 /// spacing a chord leaves its parallel by 1" at most.
 const EDGE_STEP_DEGREES: f64 = 0.5;
 
+/// Origin of the boundaries, for `--version`.
+pub const SOURCE: &str = "IAU boundaries of B1875.0, Roman 1987 (CDS VI/42)";
+
+/// Right ascension in hours and declination in degrees, B1875.0.
+type Place = (f64, f64);
+
 /// What a constellation is called and where its name may stand.
 struct Names {
     abbreviation: &'static str,
     name: &'static str,
     genitive: &'static str,
-    anchors: &'static [(f64, f64)],
+    anchors: &'static [Place],
 }
 
 const fn names(
     abbreviation: &'static str,
     name: &'static str,
     genitive: &'static str,
-    anchors: &'static [(f64, f64)],
+    anchors: &'static [Place],
 ) -> Names {
     Names {
         abbreviation,
@@ -166,8 +172,62 @@ pub fn boundary_polylines() -> &'static [Boundary] {
     })
 }
 
+/// A stretch of edge along one hour circle or one parallel of B1875.0, degrees. The right ascension may go beyond 360.
+#[derive(Clone, Copy)]
+struct Edge {
+    from_ra: f64,
+    to_ra: f64,
+    from_dec: f64,
+    to_dec: f64,
+}
+
+/// How far a direction (ICRS) may move without crossing a boundary: a lower bound on the distance to the nearest edge, at
+/// least 0.7 times the distance itself, 0 on an edge.
+#[must_use]
+pub fn clearance(icrs: Vec3) -> Angle {
+    static EDGES: OnceLock<Vec<Edge>> = OnceLock::new();
+    let edges = EDGES.get_or_init(|| {
+        let mut edges = Vec::new();
+        for pair in CHAINS.iter().flat_map(|(_, _, corners)| corners.windows(2)) {
+            if let &[(hours, dec), (next_hours, next_dec)] = pair {
+                let (a, b) = (hours * 15.0, next_hours * 15.0);
+                edges.push(Edge {
+                    from_ra: a.min(b),
+                    to_ra: a.max(b),
+                    from_dec: dec.min(next_dec),
+                    to_dec: dec.max(next_dec),
+                });
+            }
+        }
+        edges
+    });
+    let here = B1875_FROM_ICRS * icrs;
+    let (ra, dec) = (here.longitude().degrees(), here.latitude().degrees());
+    let cos_dec = libm::hypot(here.x, here.y);
+    let mut nearest = 180.0_f64;
+    for edge in edges {
+        let across = (edge.from_dec - dec).max(dec - edge.to_dec).max(0.0);
+        if across >= nearest {
+            continue;
+        }
+        let width = edge.to_ra - edge.from_ra;
+        // From the edge's western end, 0 to 360: beyond the width the way round to either end.
+        let past = (ra - edge.from_ra).rem_euclid(360.0);
+        let off = if past <= width {
+            0.0
+        } else {
+            (past - width).min(360.0 - past)
+        };
+        // The distance to an hour circle; behind the pole an edge is at least as far as the pole.
+        let along = Angle::from_degrees(off.min(90.0)).sin() * cos_dec;
+        let along = Angle::from_radians(libm::asin(along.clamp(0.0, 1.0))).degrees();
+        nearest = nearest.min(across.max(along));
+    }
+    Angle::from_degrees(nearest)
+}
+
 /// Points along a chain of corners (hours, degrees, B1875.0), corners included.
-fn points_along(corners: &[(f64, f64)]) -> Vec<Vec3> {
+fn points_along(corners: &[Place]) -> Vec<Vec3> {
     let mut points = Vec::new();
     for pair in corners.windows(2) {
         let &[(hours, degrees), (next_hours, next_degrees)] = pair else {
