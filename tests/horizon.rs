@@ -27,12 +27,18 @@ fn rise_set_twilight_and_transit_agree_with_de440() {
             longitude: Angle::from_degrees(row.number("lon_deg")),
             elevation_m: row.number("elev_m"),
             height_above_surroundings_m: 0.0,
-            air: Air { pressure_hpa: 1010.0, temperature_c: 10.0 },
+            air: Air {
+                pressure_hpa: 1010.0,
+                temperature_c: 10.0,
+            },
             extinction_mag: 0.25,
         };
         let tables = sky.tables();
         let from = tables.tt_from_utc(parse_utc(row.text("window_start_utc")).unwrap());
-        let span = Span { from, to: from.plus_days(1.0) };
+        let span = Span {
+            from,
+            to: from.plus_days(1.0),
+        };
         let planet: Body = row.text("planet").parse().unwrap();
         use HorizonKind as H;
         for (body, kind, column) in [
@@ -59,7 +65,8 @@ fn rise_set_twilight_and_transit_agree_with_de440() {
                 (text, None) => panic!("{name}: the table has {text}"),
                 (text, Some(event)) => {
                     let expected = parse_utc(text).unwrap();
-                    let off = (tables.utc_from_tt(event.instant).days() - expected.days()) * 86_400.0;
+                    let off =
+                        (tables.utc_from_tt(event.instant).days() - expected.days()) * 86_400.0;
                     assert!(off.abs() < SECONDS, "{name}: {off} s");
                     worst = worst.max(off.abs());
                     checked += 1;

@@ -28,10 +28,20 @@ fn arrows_point_down_only() {
             let text = fs::read_to_string(&file).unwrap();
             for (number, line) in text.lines().enumerate() {
                 for used in line.split("crate::").skip(1) {
-                    let name: String = used.chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect();
-                    let Some(depth) = LAYERS.iter().position(|layer| *layer == name) else { continue };
+                    let name: String = used
+                        .chars()
+                        .take_while(|c| c.is_alphanumeric() || *c == '_')
+                        .collect();
+                    let Some(depth) = LAYERS.iter().position(|layer| *layer == name) else {
+                        continue;
+                    };
                     seen += 1;
-                    assert!(depth <= height, "{}:{}: {layer} uses {name} above it", file.display(), number + 1);
+                    assert!(
+                        depth <= height,
+                        "{}:{}: {layer} uses {name} above it",
+                        file.display(),
+                        number + 1
+                    );
                 }
             }
         }
@@ -41,8 +51,20 @@ fn arrows_point_down_only() {
 
 /// Doors to the outside world, and functions whose last digit depends on the system.
 const FOREIGN: [&str; 14] = [
-    "std::fs", "std::env", "SystemTime", "Instant::now", "Local::now", "egui", ".atan2(", ".powf(", ".ln()", ".exp()",
-    ".log10()", ".asin()", ".acos()", ".cbrt()",
+    "std::fs",
+    "std::env",
+    "SystemTime",
+    "Instant::now",
+    "Local::now",
+    "egui",
+    ".atan2(",
+    ".powf(",
+    ".ln()",
+    ".exp()",
+    ".log10()",
+    ".asin()",
+    ".acos()",
+    ".cbrt()",
 ];
 
 /// The engine takes clock, files and environment from its caller and its functions from libm.
@@ -53,7 +75,9 @@ fn the_engine_is_pure() {
         for file in rust_files(&source.join(layer)) {
             let text = fs::read_to_string(&file).unwrap();
             for word in FOREIGN {
-                let hit = text.lines().find(|line| line.contains(word) && !line.trim_start().starts_with("//"));
+                let hit = text
+                    .lines()
+                    .find(|line| line.contains(word) && !line.trim_start().starts_with("//"));
                 assert!(hit.is_none(), "{}: {word} in {hit:?}", file.display());
             }
         }

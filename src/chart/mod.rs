@@ -4,7 +4,9 @@
 
 mod geometry;
 mod palette;
+mod place;
 mod scene;
+mod strip;
 mod text;
 
 pub use geometry::{Point, Rect};
@@ -13,5 +15,8 @@ pub(crate) use scene::number;
 pub use scene::{
     Align, Hit, Label, Layer, Mark, MarkId, Paint, RibbonPoint, Run, Scene, Shape, Stop, Stroke,
     ribbon_outlines,
+};
+pub use strip::{
+    DateRank, StripDate, StripLayout, StripRow, StripText, StripView, StripWindow, strip,
 };
 pub use text::{Font, Glyph, glyph, width as text_width};

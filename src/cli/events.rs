@@ -4,16 +4,16 @@ use std::io::{BufWriter, stdout};
 
 use crate::season::close::{Limits, close_approaches};
 use crate::season::events::{Kinds, events};
-use crate::season::horizon::{HorizonEvent, HorizonKind, horizon_events};
-use crate::season::{Event, EventKind, EventValue, Other, Span};
+use crate::season::horizon::{HorizonKind, horizon_events};
+use crate::season::{EventKind, Span};
 use crate::sheet::table::{Cell, TableWriter};
+use crate::sheet::tables::{EVENT_COLUMNS, event_row, horizon_row};
 use crate::sky::place::Sky;
 use crate::sky::stars::{Star, StarCatalogue};
-use crate::sky::{Body, Cautions, Tt};
+use crate::sky::{Body, Tt};
 
-use super::places::utc_tenths;
 use super::progress::Progress;
-use super::words::{self, InstantWord, SiteWord, julian_date_text};
+use super::words::{self, InstantWord, SiteWord};
 use super::{CliError, Format};
 
 /// Print events: oppositions, conjunctions, stations, elongations, nearest and brightest, rise and set.
@@ -49,7 +49,6 @@ pub struct Options {
     format: Format,
 }
 
-const COLUMNS: &[&str] = &["body", "kind", "jd_tt", "utc", "value", "value_is", "caution"];
 /// The span is worked through in pieces of so many days, so that memory stays flat.
 const PIECE_DAYS: f64 = 400.0;
 
@@ -63,25 +62,44 @@ struct Wanted {
 impl Wanted {
     fn read(options: &Options) -> Result<Self, String> {
         let Some(list) = &options.kinds else {
-            return Ok(Wanted { planetary: Kinds::ALL, close: false, horizon: Vec::new() });
+            return Ok(Wanted {
+                planetary: Kinds::ALL,
+                close: false,
+                horizon: Vec::new(),
+            });
         };
-        let mut wanted = Wanted { planetary: Kinds::NONE, close: false, horizon: Vec::new() };
-        for word in list.split(',').map(str::trim).filter(|word| !word.is_empty()) {
+        let mut wanted = Wanted {
+            planetary: Kinds::NONE,
+            close: false,
+            horizon: Vec::new(),
+        };
+        for word in list
+            .split(',')
+            .map(str::trim)
+            .filter(|word| !word.is_empty())
+        {
             if let Some(kind) = EventKind::ALL.into_iter().find(|kind| kind.word() == word) {
                 if kind == EventKind::CloseApproach {
                     wanted.close = true;
                 } else {
                     wanted.planetary = wanted.planetary.and(Kinds::of(&[kind]));
                 }
-            } else if let Some(kind) = HorizonKind::ALL.into_iter().find(|kind| kind.word() == word) {
+            } else if let Some(kind) = HorizonKind::ALL
+                .into_iter()
+                .find(|kind| kind.word() == word)
+            {
                 if options.site.is_none() {
-                    return Err(format!("\"{word}\" happens at a place; add --site LAT,LON,ELEV_M"));
+                    return Err(format!(
+                        "\"{word}\" happens at a place; add --site LAT,LON,ELEV_M"
+                    ));
                 }
                 if !wanted.horizon.contains(&kind) {
                     wanted.horizon.push(kind);
                 }
             } else {
-                return Err(format!("no kind of event is called \"{word}\"; \"loopwright events --help\" lists them"));
+                return Err(format!(
+                    "no kind of event is called \"{word}\"; \"loopwright events --help\" lists them"
+                ));
             }
         }
         if wanted.planetary == Kinds::NONE && !wanted.close && wanted.horizon.is_empty() {
@@ -100,33 +118,56 @@ struct Row {
 pub(super) fn run(options: &Options) -> Result<(), CliError> {
     let bodies = words::bodies(&options.bodies).map_err(CliError::Words)?;
     let wanted = Wanted::read(options).map_err(CliError::Words)?;
-    let span = Span { from: options.from.0, to: options.to.0 };
+    let span = Span {
+        from: options.from.0,
+        to: options.to.0,
+    };
     if span.from >= span.to {
-        return Err(CliError::Words(String::from("--to must be later than --from")));
+        return Err(CliError::Words(String::from(
+            "--to must be later than --from",
+        )));
     }
     if wanted.horizon.iter().any(|kind| kind.is_twilight()) && !bodies.contains(&Body::Sun) {
-        return Err(CliError::Words(String::from("dusks and dawns are the Sun's; add sun to --bodies")));
+        return Err(CliError::Words(String::from(
+            "dusks and dawns are the Sun's; add sun to --bodies",
+        )));
     }
     let sky = Sky::for_span(span.from, span.to)?;
-    let stars = if wanted.close { bright_zodiac_stars(span.middle())? } else { Vec::new() };
-    let mut table = TableWriter::new(BufWriter::new(stdout().lock()), COLUMNS, options.format.into())?;
+    let stars = if wanted.close {
+        bright_zodiac_stars(span.middle())?
+    } else {
+        Vec::new()
+    };
+    let mut table = TableWriter::new(
+        BufWriter::new(stdout().lock()),
+        EVENT_COLUMNS,
+        options.format.into(),
+    )?;
     let mut progress = Progress::new("events");
     let mut seen = vec![false; bodies.len()];
     let pieces = (span.days() / PIECE_DAYS).ceil().max(1.0) as u64;
     for piece in 0..pieces {
         let from = span.from.plus_days(piece as f64 * PIECE_DAYS);
-        let to = if piece + 1 == pieces { span.to } else { span.from.plus_days((piece + 1) as f64 * PIECE_DAYS) };
+        let to = if piece + 1 == pieces {
+            span.to
+        } else {
+            span.from.plus_days((piece + 1) as f64 * PIECE_DAYS)
+        };
         let part = Span { from, to };
         let mut rows: Vec<Row> = Vec::new();
         for event in events(&sky, &bodies, wanted.planetary, part)? {
-            rows.push(planetary_row(&sky, &event));
+            rows.push(Row { instant: event.instant, cells: event_row(&sky, &event) });
         }
         for (index, &body) in bodies.iter().enumerate() {
             if wanted.close && body != Body::Sun {
-                let others: Vec<Body> =
-                    Body::PLANETS.into_iter().chain([Body::Moon]).filter(|&other| body != other).collect();
-                for event in close_approaches(&sky, body, &others, &stars, Limits::default(), part)? {
-                    rows.push(planetary_row(&sky, &event));
+                let others: Vec<Body> = Body::PLANETS
+                    .into_iter()
+                    .chain([Body::Moon])
+                    .filter(|&other| body != other)
+                    .collect();
+                for event in close_approaches(&sky, body, &others, &stars, Limits::default(), part)?
+                {
+                    rows.push(Row { instant: event.instant, cells: event_row(&sky, &event) });
                 }
             }
             if let Some(SiteWord(site)) = &options.site
@@ -134,7 +175,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             {
                 let found = horizon_events(&sky, site, body, &wanted.horizon, part)?;
                 seen[index] |= !found.is_empty();
-                rows.extend(found.iter().map(|event| horizon_row(&sky, event)));
+                rows.extend(found.iter().map(|event| Row { instant: event.instant, cells: horizon_row(&sky, event) }));
             }
         }
         rows.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()));
@@ -148,7 +189,10 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     if !wanted.horizon.is_empty() {
         for (body, _) in bodies.iter().zip(seen).filter(|(_, seen)| !seen) {
             let kinds: Vec<&str> = wanted.horizon.iter().map(|kind| kind.word()).collect();
-            eprintln!("{body}: no {} at this site within the span", kinds.join(", "));
+            eprintln!(
+                "{body}: no {} at this site within the span",
+                kinds.join(", ")
+            );
         }
     }
     Ok(())
@@ -158,53 +202,18 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
 fn bright_zodiac_stars(epoch: Tt) -> Result<Vec<&'static Star>, CliError> {
     const FAINTEST: f64 = 3.0;
     let frame = crate::sky::frames::ReferenceFrame::j2000();
-    let catalogue = StarCatalogue::embedded().map_err(|error| CliError::Failed(error.to_string()))?;
+    let catalogue =
+        StarCatalogue::embedded().map_err(|error| CliError::Failed(error.to_string()))?;
     Ok(catalogue
         .to_magnitude(FAINTEST)
         .iter()
         .filter(|star| star.name.is_some())
-        .filter(|star| (frame.ecliptic_from_icrs * star.direction_at(epoch)).latitude().degrees().abs() < 12.0)
+        .filter(|star| {
+            (frame.ecliptic_from_icrs * star.direction_at(epoch))
+                .latitude()
+                .degrees()
+                .abs()
+                < 12.0
+        })
         .collect())
-}
-
-fn row(sky: &Sky, words: [&str; 2], instant: Tt, value: Cell, value_is: String, cautions: Cautions) -> Row {
-    let cautions = cautions.and(sky.tables().delta_t(instant).cautions());
-    let [body, kind] = words;
-    let cells = vec![
-        Cell::text(body),
-        Cell::text(kind),
-        Cell::Digits(julian_date_text(instant, 8)),
-        Cell::text(utc_tenths(sky, instant)),
-        value,
-        Cell::text(value_is),
-        Cell::text(cautions.to_string()),
-    ];
-    Row { instant, cells }
-}
-
-fn planetary_row(sky: &Sky, event: &Event) -> Row {
-    let (value, value_is) = match event.value {
-        EventValue::Longitude(angle) => (Cell::Number(angle.degrees(), 6), String::from("lon_deg")),
-        EventValue::RightAscension(angle) => (Cell::Number(angle.degrees(), 6), String::from("ra_deg")),
-        EventValue::Elongation(angle) => (Cell::Number(angle.degrees(), 6), String::from("elong_deg")),
-        EventValue::DistanceAu(distance) => (Cell::Number(distance, 9), String::from("dist_au")),
-        EventValue::Magnitude(magnitude) => (Cell::Number(magnitude, 3), String::from("magnitude")),
-        EventValue::Separation(angle) => {
-            let partner = match &event.with {
-                Some(Other::Body(body)) => body.word().to_owned(),
-                Some(Other::Star(name)) => name.to_lowercase().replace(' ', "_"),
-                None => String::from("nothing"),
-            };
-            (Cell::Number(angle.degrees(), 6), format!("separation_deg_from_{partner}"))
-        }
-        EventValue::Constellation(name) => (Cell::text(name), String::from("constellation")),
-    };
-    row(sky, [event.body.word(), event.kind.word()], event.instant, value, value_is, event.cautions)
-}
-
-fn horizon_row(sky: &Sky, event: &HorizonEvent) -> Row {
-    let value_is = if event.kind == HorizonKind::UpperTransit { "altitude_deg" } else { "azimuth_deg" };
-    let value = Cell::Number(event.value.degrees(), 6);
-    let words = [event.body.word(), event.kind.word()];
-    row(sky, words, event.instant, value, String::from(value_is), sky.cautions())
 }

@@ -5,8 +5,10 @@
 
 mod completions;
 mod events;
+mod new;
 mod places;
 mod progress;
+mod sheet;
 pub mod words;
 
 use std::ffi::OsString;
@@ -16,9 +18,13 @@ use std::process::ExitCode;
 
 use clap::{CommandFactory, FromArgMatches, Parser, Subcommand, ValueEnum};
 
-use crate::scenario::ScenarioError;
+use crate::scenario::files::FileError;
+use crate::scenario::{PlanError, ScenarioError};
+use crate::sheet::SheetError;
 use crate::sheet::table::TableFormat;
+use crate::sky::delta_t::TimeTables;
 use crate::sky::place::SkyError;
+use crate::sky::{Tt, Utc};
 
 /// Plans a planet's season from one place: the loop among the stars, the events, the sheets to hand out.
 #[derive(Debug, Parser)]
@@ -41,6 +47,8 @@ struct Line {
 
 #[derive(Debug, Subcommand)]
 enum Command {
+    Sheet(sheet::Options),
+    New(new::Options),
     Places(places::Options),
     Events(events::Options),
     Completions(completions::Options),
@@ -75,6 +83,12 @@ pub enum CliError {
     Sky(#[from] SkyError),
     #[error(transparent)]
     Scenario(#[from] ScenarioError),
+    #[error(transparent)]
+    Plan(#[from] PlanError),
+    #[error(transparent)]
+    Sheet(#[from] SheetError),
+    #[error(transparent)]
+    Files(#[from] FileError),
     #[error("{what}: {source}")]
     File { what: String, source: io::Error },
     /// The reader of our output has gone away, as `head` does: not an error to speak of.
@@ -100,7 +114,10 @@ impl From<io::Error> for CliError {
 #[must_use]
 pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
     let command = Line::command().long_version(long_version());
-    let line = match command.try_get_matches_from(words).and_then(|matches| Line::from_arg_matches(&matches)) {
+    let line = match command
+        .try_get_matches_from(words)
+        .and_then(|matches| Line::from_arg_matches(&matches))
+    {
         Ok(line) => line,
         Err(error) => {
             // Help and version are data; a closed pipe under them is nobody's fault.
@@ -109,7 +126,9 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         }
     };
     let result = match &line.command {
-        None => Ok(()),
+        None => sheet::run_default(line.scenario.as_deref()),
+        Some(Command::Sheet(options)) => sheet::run(options),
+        Some(Command::New(options)) => new::run(options),
         Some(Command::Places(options)) => places::run(options),
         Some(Command::Events(options)) => events::run(options),
         Some(Command::Completions(options)) => completions::run(options),
@@ -118,16 +137,35 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         Ok(()) | Err(CliError::ClosedPipe) => ExitCode::SUCCESS,
         Err(error) => {
             eprintln!("loopwright: {error}");
-            ExitCode::from(if matches!(error, CliError::Words(_)) { 2 } else { 1 })
+            ExitCode::from(if matches!(error, CliError::Words(_)) {
+                2
+            } else {
+                1
+            })
         }
     }
 }
 
+/// The instant of this computer's clock.
+fn now() -> Tt {
+    // Seconds between 1970-01-01 0h and 2000-01-01 12h.
+    const J2000_UNIX: f64 = 946_728_000.0;
+    let since = std::time::SystemTime::now().duration_since(std::time::UNIX_EPOCH);
+    // A clock before 1970 is a clock that is not set: the season it leads to is as good as any.
+    let seconds = since.map_or(0.0, |since| since.as_secs_f64());
+    TimeTables::embedded().tt_from_utc(Utc::from_days((seconds - J2000_UNIX) / 86_400.0))
+}
+
 /// The versions of the program and of its data.
 fn long_version() -> String {
-    let tables = crate::sky::delta_t::TimeTables::embedded();
+    let tables = TimeTables::embedded();
     let ephemeris = match crate::sky::ephemeris::Ephemeris::embedded() {
-        Ok(ephemeris) => format!("{} (format {}, checksum {:08x})", ephemeris.source(), ephemeris.version(), ephemeris.checksum()),
+        Ok(ephemeris) => format!(
+            "{} (format {}, checksum {:08x})",
+            ephemeris.source(),
+            ephemeris.version(),
+            ephemeris.checksum()
+        ),
         Err(error) => error.to_string(),
     };
     format!(

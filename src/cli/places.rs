@@ -3,18 +3,14 @@
 use std::io::{BufWriter, Read, stdout};
 use std::path::PathBuf;
 
-use crate::season::horizon::Threshold;
-use crate::sheet::table::{Cell, TableWriter};
-use crate::sky::calendar::{Precision, utc_text};
-use crate::sky::constellations::Constellation;
-use crate::sky::light::{MarsTerms, magnitude};
-use crate::sky::physical::equatorial_diameter;
-use crate::sky::place::{Place, Sky, SkyError, Vantage};
-use crate::sky::refraction::apparent_from_true;
-use crate::sky::{Angle, Body, Caution, Site, Tt};
+use crate::scenario::DEFAULT_SUN_DISTANCE;
+use crate::sheet::table::TableWriter;
+use crate::sheet::tables::{PLACE_COLUMNS, place_row};
+use crate::sky::Tt;
+use crate::sky::place::{Sky, SkyError};
 
 use super::progress::Progress;
-use super::words::{self, InstantWord, SiteWord, StepWord, julian_date_text};
+use super::words::{self, InstantWord, SiteWord, StepWord};
 use super::{CliError, Format};
 
 /// Print places of bodies: coordinates, distances, elongation, phase, magnitude.
@@ -31,13 +27,24 @@ pub struct Options {
     #[arg(long, value_name = "LIST")]
     bodies: String,
     /// First instant: 2026-11-01, 2026-11, 2026-11-01T18:30:00Z or "JD 2461000.5 TT".
-    #[arg(long, value_name = "T", requires = "to", required_unless_present = "instants", allow_hyphen_values = true)]
+    #[arg(
+        long,
+        value_name = "T",
+        requires = "to",
+        required_unless_present = "instants",
+        allow_hyphen_values = true
+    )]
     from: Option<InstantWord>,
     /// End of the span, which does not belong to it.
     #[arg(long, value_name = "T", requires = "from", allow_hyphen_values = true)]
     to: Option<InstantWord>,
     /// Step: 1d, 6h, 10min, 30s.
-    #[arg(long, value_name = "STEP", default_value = "1d", allow_hyphen_values = true)]
+    #[arg(
+        long,
+        value_name = "STEP",
+        default_value = "1d",
+        allow_hyphen_values = true
+    )]
     step: StepWord,
     /// A file with one instant a line, or - for standard input; rows come out in its order.
     #[arg(long, value_name = "FILE", conflicts_with_all = ["from", "to", "step"])]
@@ -48,28 +55,6 @@ pub struct Options {
     #[arg(long, value_enum, default_value_t)]
     format: Format,
 }
-
-const COLUMNS: &[&str] = &[
-    "body",
-    "utc",
-    "jd_tt",
-    "ra_deg",
-    "dec_deg",
-    "lon_deg",
-    "lat_deg",
-    "distance_au",
-    "sun_distance_au",
-    "elongation_deg",
-    "phase_angle_deg",
-    "lit_fraction",
-    "diameter_arcsec",
-    "magnitude",
-    "constellation",
-    "altitude_deg",
-    "apparent_altitude_deg",
-    "azimuth_deg",
-    "caution",
-];
 
 /// Largest file of instants that is read: two million of them.
 const LARGEST_FILE: u64 = 64 << 20;
@@ -89,9 +74,9 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             None => sky.geocentre(instant)?,
         };
         for &body in &bodies {
-            let cells = row(sky, &vantage, site, body)?;
+            let cells = place_row(sky, &vantage, site, body, DEFAULT_SUN_DISTANCE)?;
             if let Some(sink) = sink.take() {
-                table = Some(TableWriter::new(sink, COLUMNS, options.format.into())?);
+                table = Some(TableWriter::new(sink, PLACE_COLUMNS, options.format.into())?);
             }
             if let Some(table) = &mut table {
                 table.row(&cells)?;
@@ -110,7 +95,9 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         }
         (None, Some(InstantWord(from)), Some(InstantWord(to))) => {
             if from >= to {
-                return Err(CliError::Words(String::from("--to must be later than --from")));
+                return Err(CliError::Words(String::from(
+                    "--to must be later than --from",
+                )));
             }
             let mut k = 0.0_f64;
             loop {
@@ -124,13 +111,17 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             }
         }
         // clap sees to it that one of the two is given.
-        _ => return Err(CliError::Words(String::from("give --from and --to, or --instants"))),
+        _ => {
+            return Err(CliError::Words(String::from(
+                "give --from and --to, or --instants",
+            )));
+        }
     }
     match table {
         Some(table) => table.finish().map(drop)?,
         None => {
             if let Some(sink) = sink {
-                TableWriter::new(sink, COLUMNS, options.format.into())?.finish()?;
+                TableWriter::new(sink, PLACE_COLUMNS, options.format.into())?.finish()?;
             }
         }
     }
@@ -138,21 +129,43 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
 }
 
 fn read_instants(file: &std::path::Path) -> Result<Vec<Tt>, CliError> {
-    let name = if file.as_os_str() == "-" { String::from("standard input") } else { file.display().to_string() };
-    let cannot = |source| CliError::File { what: format!("{name} cannot be read"), source };
+    let name = if file.as_os_str() == "-" {
+        String::from("standard input")
+    } else {
+        file.display().to_string()
+    };
+    let cannot = |source| CliError::File {
+        what: format!("{name} cannot be read"),
+        source,
+    };
     let mut bytes = Vec::new();
     if file.as_os_str() == "-" {
-        std::io::stdin().lock().take(LARGEST_FILE + 1).read_to_end(&mut bytes).map_err(cannot)?;
+        std::io::stdin()
+            .lock()
+            .take(LARGEST_FILE + 1)
+            .read_to_end(&mut bytes)
+            .map_err(cannot)?;
     } else {
         let opened = std::fs::File::open(file).map_err(cannot)?;
-        opened.take(LARGEST_FILE + 1).read_to_end(&mut bytes).map_err(cannot)?;
+        opened
+            .take(LARGEST_FILE + 1)
+            .read_to_end(&mut bytes)
+            .map_err(cannot)?;
     }
     if bytes.len() as u64 > LARGEST_FILE {
-        return Err(CliError::Failed(format!("{name} is larger than 64 MB; split it")));
+        return Err(CliError::Failed(format!(
+            "{name} is larger than 64 MB; split it"
+        )));
     }
-    let text = String::from_utf8(bytes)
-        .map_err(|_| CliError::Failed(format!("{name} is not UTF-8 text; it holds one instant a line")))?;
-    let lines = text.lines().enumerate().map(|(index, line)| (index + 1, line.trim()));
+    let text = String::from_utf8(bytes).map_err(|_| {
+        CliError::Failed(format!(
+            "{name} is not UTF-8 text; it holds one instant a line"
+        ))
+    })?;
+    let lines = text
+        .lines()
+        .enumerate()
+        .map(|(index, line)| (index + 1, line.trim()));
     lines
         .filter(|(_, line)| !line.is_empty() && !line.starts_with('#'))
         .map(|(number, line)| {
@@ -183,74 +196,8 @@ impl Skies {
         if self.series.as_ref().is_none_or(|sky| !sky.covers(instant)) {
             self.series = Some(Sky::for_span(instant, instant)?);
         }
-        self.series.as_ref().ok_or(SkyError::OutsideAllSpans { jd: instant.julian_date() })
+        self.series.as_ref().ok_or(SkyError::OutsideAllSpans {
+            jd: instant.julian_date(),
+        })
     }
-}
-
-fn row(sky: &Sky, vantage: &Vantage<'_>, site: Option<&Site>, body: Body) -> Result<Vec<Cell>, SkyError> {
-    let place = vantage.place(body)?;
-    let sun = vantage.place(Body::Sun)?;
-    let geometry = place.geometry();
-    let light = magnitude(&geometry, MarsTerms::Include);
-    let equatorial = place.equatorial_of_date();
-    let ecliptic = place.ecliptic_of_date();
-    let elongation = place.separation(&sun);
-    let seen = vantage.horizontal(place.apparent);
-    let instant = vantage.instant();
-    let is_sun = body == Body::Sun;
-    let cautions = place
-        .cautions
-        .and(light.cautions)
-        .and(sky.tables().delta_t(instant).cautions())
-        .with_if(sun_is_near(vantage, &sun, elongation), Caution::SunNear);
-    let unless_sun = |value: f64| if is_sun { None } else { Some(value) };
-    Ok(vec![
-        Cell::text(body.word()),
-        Cell::text(utc_words(sky, instant)),
-        Cell::Digits(julian_date_text(instant, 9)),
-        Cell::Number(equatorial.longitude.degrees(), 8),
-        Cell::Number(equatorial.latitude.degrees(), 8),
-        Cell::Number(ecliptic.longitude.degrees(), 8),
-        Cell::Number(ecliptic.latitude.degrees(), 8),
-        Cell::Number(place.distance_au, 10),
-        Cell::number(unless_sun(geometry.sun_distance_au()), 10),
-        Cell::Number(elongation.degrees(), 7),
-        Cell::number(unless_sun(geometry.phase_angle().degrees()), 7),
-        Cell::number(unless_sun(geometry.lit_fraction()), 7),
-        Cell::Number(equatorial_diameter(&geometry).arcsec(), 5),
-        Cell::Number(light.value, 3),
-        Cell::text(Constellation::at_icrs(place.direction).abbreviation()),
-        Cell::number(seen.map(|seen| seen.altitude.degrees()), 7),
-        Cell::number(
-            seen.zip(site).map(|(seen, site)| apparent_from_true(seen.altitude, &site.air).degrees()),
-            7,
-        ),
-        Cell::number(seen.map(|seen| seen.azimuth.degrees()), 7),
-        Cell::text(cautions.to_string()),
-    ])
-}
-
-/// Within 20 degrees of a Sun that is up, or, seen from no particular place, may be up.
-fn sun_is_near(vantage: &Vantage<'_>, sun: &Place, elongation: Angle) -> bool {
-    const NEAR: Angle = Angle::from_degrees(20.0);
-    let sun_up = match vantage.horizontal(sun.apparent) {
-        Some(seen) => seen.altitude > Threshold::RiseSet.altitude_of(sun),
-        None => true,
-    };
-    elongation < NEAR && sun_up
-}
-
-/// The instant in UTC (before 1972 UT1), to the second where it falls on one, else to the millisecond.
-fn utc_words(sky: &Sky, instant: Tt) -> String {
-    let utc = sky.tables().utc_from_tt(instant);
-    let seconds = (utc.days().fract() * 86_400.0).abs();
-    let whole = (seconds - seconds.round()).abs() < 5e-4;
-    let precision = if whole { Precision::Second } else { Precision::Decimals(3) };
-    utc_text(utc, precision).unwrap_or_else(|error| error.to_string())
-}
-
-/// The instant in UTC with tenths of a second, as tables of events print it.
-pub(super) fn utc_tenths(sky: &Sky, instant: Tt) -> String {
-    let utc = sky.tables().utc_from_tt(instant);
-    utc_text(utc, Precision::Decimals(1)).unwrap_or_else(|error| error.to_string())
 }

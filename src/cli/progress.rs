@@ -14,7 +14,12 @@ pub struct Progress {
 impl Progress {
     #[must_use]
     pub fn new(what: &'static str) -> Self {
-        Progress { what, started: Instant::now(), shown: None, enabled: stderr().is_terminal() }
+        Progress {
+            what,
+            started: Instant::now(),
+            shown: None,
+            enabled: stderr().is_terminal(),
+        }
     }
 
     /// Says that this share of the work, 0 to 1, is done.
@@ -25,7 +30,12 @@ impl Progress {
         };
         if self.enabled && due {
             // A terminal that cannot be written to loses the progress, nothing else.
-            let _ = write!(stderr(), "\r{} {:.0} %", self.what, 100.0 * share.clamp(0.0, 1.0));
+            let _ = write!(
+                stderr(),
+                "\r{} {:.0} %",
+                self.what,
+                100.0 * share.clamp(0.0, 1.0)
+            );
             self.shown = Some(Instant::now());
         }
     }

@@ -37,9 +37,15 @@ impl FromStr for InstantWord {
 /// `2461000.5 TT` with all its decimals: the whole days are taken off before the text becomes a number.
 fn julian_date(text: &str) -> Result<Tt, String> {
     let wrong = || {
-        format!("\"JD {text}\" cannot be read; a Julian Date is written \"JD 2461000.5 TT\", in Terrestrial Time and not below 0")
+        format!(
+            "\"JD {text}\" cannot be read; a Julian Date is written \"JD 2461000.5 TT\", in Terrestrial Time and not below 0"
+        )
     };
-    let number = text.strip_suffix("TT").or_else(|| text.strip_suffix("tt")).ok_or_else(wrong)?.trim();
+    let number = text
+        .strip_suffix("TT")
+        .or_else(|| text.strip_suffix("tt"))
+        .ok_or_else(wrong)?
+        .trim();
     let (whole, fraction) = number.split_once('.').unwrap_or((number, "0"));
     let digits = |part: &str| !part.is_empty() && part.bytes().all(|byte| byte.is_ascii_digit());
     if !digits(whole) || !digits(fraction) || whole.len() > 9 {
@@ -48,17 +54,6 @@ fn julian_date(text: &str) -> Result<Tt, String> {
     let whole: f64 = whole.parse().map_err(|_| wrong())?;
     let fraction: f64 = format!("0.{fraction}").parse().map_err(|_| wrong())?;
     Ok(Tt::from_days((whole - J2000_JD) + fraction))
-}
-
-/// The Julian Date of an instant with so many decimals, more than one `f64` of it would hold.
-#[must_use]
-pub fn julian_date_text(tt: Tt, decimals: u32) -> String {
-    let scale = 10_i64.pow(decimals);
-    let whole = tt.days().floor();
-    let steps = ((tt.days() - whole) * scale as f64).round() as i64;
-    let days = whole as i64 + J2000_JD as i64 + steps / scale;
-    let width = decimals as usize;
-    format!("{days}.{:0width$}", steps % scale)
 }
 
 /// A step of time: `1d`, `6h`, `10min`, `30s`.
@@ -72,7 +67,9 @@ impl FromStr for StepWord {
 
     fn from_str(text: &str) -> Result<Self, String> {
         let text = text.trim();
-        let split = text.find(|c: char| c.is_ascii_alphabetic()).unwrap_or(text.len());
+        let split = text
+            .find(|c: char| c.is_ascii_alphabetic())
+            .unwrap_or(text.len());
         let (number, unit) = text.split_at(split);
         let wrong = || format!("\"{text}\" is no step; write 1d, 6h, 10min or 30s");
         let number: f64 = number.trim().parse().map_err(|_| wrong())?;
@@ -88,7 +85,9 @@ impl FromStr for StepWord {
         if days.is_finite() && days >= 0.001 / 86_400.0 {
             Ok(StepWord { days })
         } else {
-            Err(format!("a step of \"{text}\" never gets anywhere; it must be longer than 0.001 s, for example 1d"))
+            Err(format!(
+                "a step of \"{text}\" never gets anywhere; it must be longer than 0.001 s, for example 1d"
+            ))
         }
     }
 }
@@ -105,10 +104,16 @@ impl FromStr for SiteWord {
         let (latitude, longitude, elevation) = match parts[..] {
             [latitude, longitude] => (latitude, longitude, "0"),
             [latitude, longitude, elevation] => (latitude, longitude, elevation),
-            _ => return Err(format!("\"{text}\" is no site; write LAT,LON,ELEV_M, for example 47.5,-8.3,450")),
+            _ => {
+                return Err(format!(
+                    "\"{text}\" is no site; write LAT,LON,ELEV_M, for example 47.5,-8.3,450"
+                ));
+            }
         };
         let number = |name: &str, value: &str, low: f64, high: f64| {
-            let read: f64 = value.parse().map_err(|_| format!("{name} \"{value}\" is no number"))?;
+            let read: f64 = value
+                .parse()
+                .map_err(|_| format!("{name} \"{value}\" is no number"))?;
             if (low..=high).contains(&read) {
                 Ok(read)
             } else {
@@ -133,7 +138,11 @@ impl FromStr for SiteWord {
 /// A word that names no body.
 pub fn bodies(text: &str) -> Result<Vec<Body>, String> {
     let mut bodies: Vec<Body> = Vec::new();
-    for word in text.split(',').map(str::trim).filter(|word| !word.is_empty()) {
+    for word in text
+        .split(',')
+        .map(str::trim)
+        .filter(|word| !word.is_empty())
+    {
         let more = match word {
             "all" => Body::ALL.to_vec(),
             "planets" => Body::PLANETS.to_vec(),
@@ -146,7 +155,9 @@ pub fn bodies(text: &str) -> Result<Vec<Body>, String> {
         }
     }
     if bodies.is_empty() {
-        return Err(String::from("no body is named; write for example --bodies mars,venus"));
+        return Err(String::from(
+            "no body is named; write for example --bodies mars,venus",
+        ));
     }
     Ok(bodies)
 }
@@ -154,22 +165,42 @@ pub fn bodies(text: &str) -> Result<Vec<Body>, String> {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::sheet::words::julian_date_text;
 
     #[test]
     fn julian_dates_keep_their_decimals() {
-        for text in ["2423196.947002845", "2460000.500000000", "1721057.000000001", "0.250000000"] {
+        for text in [
+            "2423196.947002845",
+            "2460000.500000000",
+            "1721057.000000001",
+            "0.250000000",
+        ] {
             let instant: InstantWord = format!("JD {text} TT").parse().unwrap();
             assert_eq!(julian_date_text(instant.0, 9), text);
         }
-        for bad in ["JD 2460000.5", "JD -1 TT", "JD TT", "JD 1e5 TT", "JD 24.5.1 TT", "JD NaN TT", "yesterday"] {
+        for bad in [
+            "JD 2460000.5",
+            "JD -1 TT",
+            "JD TT",
+            "JD 1e5 TT",
+            "JD 24.5.1 TT",
+            "JD NaN TT",
+            "yesterday",
+        ] {
             assert!(bad.parse::<InstantWord>().is_err(), "{bad}");
         }
     }
 
     #[test]
     fn rounding_carries_into_the_day() {
-        assert_eq!(julian_date_text(Tt::from_days(0.999_999_999_9), 9), "2451546.000000000");
-        assert_eq!(julian_date_text(Tt::from_days(-0.000_000_000_1), 9), "2451545.000000000");
+        assert_eq!(
+            julian_date_text(Tt::from_days(0.999_999_999_9), 9),
+            "2451546.000000000"
+        );
+        assert_eq!(
+            julian_date_text(Tt::from_days(-0.000_000_000_1), 9),
+            "2451545.000000000"
+        );
     }
 
     #[test]
@@ -180,14 +211,25 @@ mod tests {
         }
         let site = "-35.1,138.6,50".parse::<SiteWord>().unwrap().0;
         assert!((site.latitude.degrees() + 35.1).abs() < 1e-12);
-        for bad in ["91,0", "0,361", "1", "1,2,3,4", "a,b,c", "NaN,0,0", "0,0,99999"] {
+        for bad in [
+            "91,0",
+            "0,361",
+            "1",
+            "1,2,3,4",
+            "a,b,c",
+            "NaN,0,0",
+            "0,0,99999",
+        ] {
             assert!(bad.parse::<SiteWord>().is_err(), "{bad}");
         }
     }
 
     #[test]
     fn lists_of_bodies() {
-        assert_eq!(bodies("mars, venus,mars").unwrap(), [Body::Mars, Body::Venus]);
+        assert_eq!(
+            bodies("mars, venus,mars").unwrap(),
+            [Body::Mars, Body::Venus]
+        );
         assert_eq!(bodies("planets").unwrap().len(), 7);
         assert!(bodies("vulcan").unwrap_err().contains("vulcan"));
         assert!(bodies(" , ").is_err());

@@ -192,4 +192,4 @@ macro_rules! checked_line {
 
 checked_line!(Title, "title", 160);
 checked_line!(SiteName, "name", 120);
-checked_line!(PartName, "part", 60);
+checked_line!(PartName, "name", 60);

@@ -383,8 +383,7 @@ impl Manifest {
     }
 
     fn lists(&self, name: &str, hash: &str) -> bool {
-        self.entries
-            .contains(&(listed_name(name), hash.to_owned()))
+        self.entries.contains(&(listed_name(name), hash.to_owned()))
     }
 
     fn add(&mut self, output: &Output<'_>) {

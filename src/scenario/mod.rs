@@ -11,6 +11,7 @@ mod checked;
 mod error;
 pub mod files;
 mod nearest;
+mod plan;
 mod skyline;
 mod v1;
 pub mod version;
@@ -23,13 +24,15 @@ use serde::{Deserialize, Serialize};
 pub use checked::{NotOneLine, OutOfRange};
 pub use error::ScenarioError;
 use files::FileError;
-pub use skyline::{SkylineError, SkylineOrigin, SkylinePoint, SkylineSource};
+pub use skyline::{SkylineError, SkylineOrigin, SkylineSource};
+pub use plan::{Plan, PlanError};
 pub use version::NEWEST_VERSION;
 pub use zone::{LocalTime, UnknownZone, Zone};
 
 use crate::season::{Conditions, Span};
 use crate::sky::calendar::CivilDate;
 use crate::sky::delta_t::TimeTables;
+use crate::sky::refraction::Air;
 use crate::sky::{Angle, Body, Site};
 
 /// The scenario that the program carries.
@@ -203,7 +206,7 @@ impl Scenario {
                     "Degrees, north and east positive. Pressure is that of the site itself. height_above_surroundings_m is how far the site looks down on the land around.",
                 ),
                 skyline: remark(
-                    "A flat horizon until points are given, as in points: [(azimuth: 143, altitude: 5.2, part: \"the mill\")], or file: \"skyline.csv\" with azimuth,altitude a row. Azimuth from true north through east.",
+                    "A flat horizon until points are given, as in points: [(azimuth: 143, altitude: 5.2, name: \"the mill\")], or file: \"skyline.csv\" with azimuth,altitude a row. Azimuth from true north through east.",
                 ),
                 conditions: remark(
                     "For an audience with bare eyes. 20 degrees of altitude suits a telescope, sun_below -12 a photograph. hours: (from: \"19:00\", to: \"23:00\") and weekdays: [friday] narrow it to when people come.",
@@ -264,6 +267,24 @@ fn folder_of(path: &Path) -> PathBuf {
     match path.parent() {
         Some(parent) if !parent.as_os_str().is_empty() => parent.to_owned(),
         _ => PathBuf::from("."),
+    }
+}
+
+/// A site with what a document may leave out: level with the land around, 10 degrees Celsius, the standard atmosphere's
+/// pressure at that elevation, and the extinction of a clear night (common practice, no source).
+#[must_use]
+pub fn usual_site(name: String, latitude: Angle, longitude: Angle, elevation_m: f64) -> Site {
+    Site {
+        name,
+        latitude,
+        longitude,
+        elevation_m,
+        height_above_surroundings_m: 0.0,
+        air: Air {
+            pressure_hpa: standard_pressure_hpa(elevation_m),
+            temperature_c: 10.0,
+        },
+        extinction_mag: 0.25,
     }
 }
 

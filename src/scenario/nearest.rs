@@ -17,6 +17,9 @@ pub(super) fn nearest<'a>(
         })
         .collect();
     scored.sort_unstable();
+    // The runners-up only where they are nearly as near.
+    let nearest = scored.first().map_or(0, |(distance, _)| *distance);
+    scored.retain(|(distance, _)| *distance <= nearest + 1);
     scored.truncate(most);
     scored.into_iter().map(|(_, candidate)| candidate).collect()
 }

@@ -1,30 +1,17 @@
-//! The skyline as a scenario gives it: points in the document, or a CSV file beside it.
-//!
-//! The CSV has the columns `azimuth_deg`, `altitude_deg` and, if wanted, `part` (the name of what stands there), one point a
-//! row, in any order; the heading row may be left out, lines that begin with `#` are remarks. Degrees, azimuth from true
-//! north through east, altitude as a theodolite reads it.
+//! The skyline as a scenario gives it: points in the document, or a CSV file beside it that [`Skyline::from_csv`] reads
+//! (azimuth, altitude and, if wanted, a name, in degrees, one point a row).
 
 use std::path::{Component, Path, PathBuf};
 
 use serde::{Deserialize, Serialize};
 
-use super::checked::{Azimuth, PartName, SkylineAltitude};
 use super::files::{FileError, read_limited};
-use crate::sky::{Angle, Skyline};
+use crate::sky::{Angle, Skyline, skyline};
 
 /// A skyline file larger than this is none: a point every thousandth of a degree fits.
 const CSV_LIMIT: u64 = 4 << 20;
-
-/// One corner of the skyline.
-#[derive(Clone, Debug, PartialEq)]
-pub struct SkylinePoint {
-    /// From true north through east, 0 to 360 degrees.
-    pub azimuth: Angle,
-    /// Apparent altitude, as a theodolite reads it.
-    pub altitude: Angle,
-    /// The name of what stands there, such as "the mill".
-    pub part: Option<String>,
-}
+/// Greatest distance between points of a smooth skyline: finer than it is usually surveyed, coarse enough to be quick.
+const SMOOTH_STEP: Angle = Angle::from_degrees(0.5);
 
 /// Where the points come from.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -40,67 +27,59 @@ pub enum SkylineOrigin {
     },
 }
 
-/// The skyline of a scenario: checked points, where they come from, and the polygon that the engine uses.
+/// The skyline of a scenario: the surveyed points, where they come from, and the polygon that everything is measured by.
 #[derive(Clone, Debug, PartialEq)]
 pub struct SkylineSource {
-    points: Vec<SkylinePoint>,
+    surveyed: Skyline,
     smooth: bool,
     origin: SkylineOrigin,
     polygon: Skyline,
 }
 
-/// Why there is no skyline.
+/// Why there is no skyline in the file that the document names.
 #[derive(Debug, thiserror::Error)]
 pub enum SkylineError {
-    #[error("the skyline's file cannot be read: {source}; {advice}")]
-    File {
-        source: FileError,
-        advice: &'static str,
-    },
-    #[error("skyline file {}, line {line}: {message}", path.display())]
-    Row {
+    #[error(
+        "the skyline's file: {0}; put it into the scenario's folder, or write points: [...] instead of file"
+    )]
+    File(FileError),
+    #[error("skyline file {}: {source}", path.display())]
+    Points {
         path: PathBuf,
-        line: u64,
-        message: String,
+        source: skyline::SkylineError,
     },
     #[error("skyline file {}: {message}", path.display())]
-    Whole { path: PathBuf, message: String },
-    #[error("skyline: {0}")]
-    Points(String),
+    Whole {
+        path: PathBuf,
+        message: &'static str,
+    },
 }
 
 impl SkylineSource {
     /// A flat horizon.
     #[must_use]
     pub fn flat() -> Self {
+        SkylineSource::in_document(Skyline::default(), false)
+    }
+
+    /// A skyline whose points stand in the document; a smooth one gets points along a curve between them.
+    #[must_use]
+    pub fn in_document(surveyed: Skyline, smooth: bool) -> Self {
+        SkylineSource::new(surveyed, smooth, SkylineOrigin::Document)
+    }
+
+    fn new(surveyed: Skyline, smooth: bool, origin: SkylineOrigin) -> Self {
+        let polygon = if smooth {
+            surveyed.smoothed(SMOOTH_STEP)
+        } else {
+            surveyed.clone()
+        };
         SkylineSource {
-            points: Vec::new(),
-            smooth: false,
-            origin: SkylineOrigin::Document,
-            polygon: Skyline::default(),
-        }
-    }
-
-    /// From points that stand in the document, in any order.
-    ///
-    /// # Errors
-    /// Three points at one azimuth, or an angle out of range.
-    pub fn from_points(points: Vec<SkylinePoint>, smooth: bool) -> Result<Self, SkylineError> {
-        SkylineSource::new(points, smooth, SkylineOrigin::Document)
-    }
-
-    fn new(
-        points: Vec<SkylinePoint>,
-        smooth: bool,
-        origin: SkylineOrigin,
-    ) -> Result<Self, SkylineError> {
-        let polygon = polygon(&points, smooth).map_err(SkylineError::Points)?;
-        Ok(SkylineSource {
-            points,
+            surveyed,
             smooth,
             origin,
             polygon,
-        })
+        }
     }
 
     /// Reads the file `name` in the document's folder.
@@ -110,28 +89,40 @@ impl SkylineSource {
         smooth: bool,
     ) -> Result<Self, SkylineError> {
         let path = folder.join(&name.0);
-        let bytes = read_limited(&path, CSV_LIMIT).map_err(|source| SkylineError::File {
-            source,
-            advice: "put it into the scenario's folder, or write points: [...] instead of file",
-        })?;
-        let points = read_csv(&path, &bytes)?;
-        let origin = SkylineOrigin::File {
-            name: name.0.clone(),
-            folder: folder.to_owned(),
+        let bytes = read_limited(&path, CSV_LIMIT).map_err(SkylineError::File)?;
+        let surveyed = match std::str::from_utf8(&bytes) {
+            Ok(text) => Skyline::from_csv(text),
+            Err(_) => {
+                return Err(SkylineError::Whole {
+                    path,
+                    message: "the text is not UTF-8; save it as CSV in UTF-8",
+                });
+            }
         };
-        SkylineSource::new(points, smooth, origin).map_err(|error| match error {
-            SkylineError::Points(message) => SkylineError::Whole { path, message },
-            other => other,
-        })
+        match surveyed {
+            Ok(surveyed) if surveyed.vertices().is_empty() => Err(SkylineError::Whole {
+                path,
+                message: "no points in it; write azimuth,altitude a row, or leave the skyline out of the scenario for a flat horizon",
+            }),
+            Ok(surveyed) => Ok(SkylineSource::new(
+                surveyed,
+                smooth,
+                SkylineOrigin::File {
+                    name: name.0.clone(),
+                    folder: folder.to_owned(),
+                },
+            )),
+            Err(source) => Err(SkylineError::Points { path, source }),
+        }
     }
 
-    /// The points as given.
+    /// The points as surveyed, in order of azimuth.
     #[must_use]
-    pub fn points(&self) -> &[SkylinePoint] {
-        &self.points
+    pub fn surveyed(&self) -> &Skyline {
+        &self.surveyed
     }
 
-    /// Whether points are put between the given ones, along a smooth curve.
+    /// Whether points are put between the surveyed ones, along a smooth curve.
     #[must_use]
     pub fn is_smooth(&self) -> bool {
         self.smooth
@@ -142,7 +133,7 @@ impl SkylineSource {
         &self.origin
     }
 
-    /// What the engine asks for altitudes.
+    /// What every altitude of the skyline is asked of.
     #[must_use]
     pub fn polygon(&self) -> &Skyline {
         &self.polygon
@@ -163,8 +154,9 @@ impl TryFrom<String> for FileName {
         if below && !name.trim().is_empty() && !name.contains('\0') {
             Ok(FileName(name))
         } else {
+            let shown: String = name.chars().take(64).collect();
             Err(format!(
-                "file \"{name}\" is not beside the scenario: put it into the scenario's folder and write its name alone, as in \"skyline.csv\""
+                "file \"{shown}\" is not beside the scenario: put it into the scenario's folder and write its name alone, as in \"skyline.csv\""
             ))
         }
     }
@@ -174,109 +166,4 @@ impl From<FileName> for String {
     fn from(name: FileName) -> String {
         name.0
     }
-}
-
-fn read_csv(path: &Path, bytes: &[u8]) -> Result<Vec<SkylinePoint>, SkylineError> {
-    let row_error = |line: u64, message: String| SkylineError::Row {
-        path: path.to_owned(),
-        line,
-        message,
-    };
-    let whole_error = |message: &str| SkylineError::Whole {
-        path: path.to_owned(),
-        message: message.to_owned(),
-    };
-    let text = std::str::from_utf8(bytes)
-        .map_err(|_| whole_error("not UTF-8; save it as CSV in UTF-8"))?;
-    let text = text.strip_prefix('\u{feff}').unwrap_or(text);
-    let mut reader = csv::ReaderBuilder::new()
-        .has_headers(false)
-        .flexible(true)
-        .comment(Some(b'#'))
-        .trim(csv::Trim::All)
-        .from_reader(text.as_bytes());
-    let mut points = Vec::new();
-    for (index, record) in reader.records().enumerate() {
-        let record = record.map_err(|error| whole_error(&error.to_string()))?;
-        let line = record.position().map_or(0, csv::Position::line);
-        let fields: Vec<&str> = record.iter().collect();
-        match fields.as_slice() {
-            ["azimuth" | "azimuth_deg", "altitude" | "altitude_deg"]
-            | [
-                "azimuth" | "azimuth_deg",
-                "altitude" | "altitude_deg",
-                "part",
-            ] if index == 0 => {}
-            [azimuth, altitude] | [azimuth, altitude, ""] => {
-                let point = read_point(azimuth, altitude, None);
-                points.push(point.map_err(|message| row_error(line, message))?);
-            }
-            [azimuth, altitude, part] => {
-                let point = read_point(azimuth, altitude, Some(part));
-                points.push(point.map_err(|message| row_error(line, message))?);
-            }
-            [only] if only.contains(';') => {
-                return Err(row_error(
-                    line,
-                    "columns are parted by semicolons: use commas, and decimal points in numbers"
-                        .to_owned(),
-                ));
-            }
-            other => {
-                return Err(row_error(
-                    line,
-                    format!(
-                        "{} columns: write azimuth,altitude or azimuth,altitude,part, as in 143,5.2,the mill",
-                        other.len()
-                    ),
-                ));
-            }
-        }
-    }
-    if points.is_empty() {
-        return Err(whole_error(
-            "no points in it; write azimuth,altitude a row, or leave the skyline out of the scenario for a flat horizon",
-        ));
-    }
-    Ok(points)
-}
-
-fn read_point(azimuth: &str, altitude: &str, part: Option<&str>) -> Result<SkylinePoint, String> {
-    let azimuth = Azimuth::try_from(read_number("azimuth", azimuth)?);
-    let altitude = SkylineAltitude::try_from(read_number("altitude", altitude)?);
-    let part = part
-        .map(|part| PartName::try_from(part.to_owned()))
-        .transpose()
-        .map_err(|error| error.to_string())?;
-    Ok(SkylinePoint {
-        azimuth: Angle::from_degrees(azimuth.map_err(|error| error.to_string())?.into()),
-        altitude: Angle::from_degrees(altitude.map_err(|error| error.to_string())?.into()),
-        part: part.map(String::from),
-    })
-}
-
-fn read_number(field: &str, text: &str) -> Result<f64, String> {
-    text.parse().map_err(|_| {
-        let shown: String = text.chars().take(40).collect();
-        format!("{field} \"{shown}\" is not a number: write degrees with a decimal point, as in 143.5")
-    })
-}
-
-/// The engine's skyline from the points; the message says which of them are at odds.
-fn polygon(points: &[SkylinePoint], _smooth: bool) -> Result<Skyline, String> {
-    let mut azimuths: Vec<f64> = points
-        .iter()
-        .map(|point| point.azimuth.wrapped().degrees())
-        .collect();
-    azimuths.sort_unstable_by(f64::total_cmp);
-    for three in azimuths.windows(3) {
-        if let [first, _, last] = three
-            && first == last
-        {
-            return Err(format!(
-                "three points stand at azimuth {first:.3}: two make a vertical wall, a third has no place; leave one out"
-            ));
-        }
-    }
-    Ok(Skyline::default())
 }

@@ -12,23 +12,21 @@ use super::checked::{
     Longitude, MoonDistance, PartName, Pressure, SiteName, SkylineAltitude, SunBelow, SunDistance,
     Temperature, Title,
 };
-use super::skyline::{FileName, SkylineOrigin, SkylinePoint, SkylineSource};
+use super::skyline::{FileName, SkylineOrigin, SkylineSource};
 use super::version::NEWEST_VERSION;
 use super::{
     DEFAULT_SUN_DISTANCE, Remarks, Scenario, SeasonDates, SkylineError, Theme, View, Zone,
-    standard_pressure_hpa,
+    usual_site,
 };
 use crate::season::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
-use crate::sky::refraction::Air;
 use crate::sky::calendar::{CivilDate, Weekday};
-use crate::sky::{Angle, Body, Site};
+use crate::sky::refraction::Air;
+use crate::sky::skyline::{SkylinePoint, Vertex};
+use crate::sky::{Angle, Body, Site, Skyline};
 
 /// Degrees in a file have at most ten decimals (0.4 microarcseconds): what was written as 51.3 is written as 51.3 again.
 const DECIMALS: f64 = 1e10;
 
-const DEFAULT_TEMPERATURE_C: f64 = 10.0;
-/// A clear night not far above the sea: common practice, no source.
-const DEFAULT_EXTINCTION_MAG: f64 = 0.25;
 /// Years that the position engine reaches.
 const FIRST_YEAR: i32 = -2000;
 const LAST_YEAR: i32 = 2999;
@@ -199,7 +197,8 @@ struct PointEntry {
     azimuth: Azimuth,
     altitude: SkylineAltitude,
     #[serde(default, skip_serializing_if = "Option::is_none")]
-    part: Option<PartName>,
+    /// What begins here.
+    name: Option<PartName>,
 }
 
 #[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
@@ -218,11 +217,15 @@ struct RawSkyline {
 /// Points that make a skyline, or the name of a file that is yet to be read.
 #[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
 #[serde(try_from = "RawSkyline", into = "RawSkyline")]
-struct SkylineEntry(RawSkyline);
+struct SkylineEntry {
+    raw: RawSkyline,
+    /// Through the points of the document.
+    surveyed: Skyline,
+}
 
 impl SkylineEntry {
     fn says_nothing(&self) -> bool {
-        self.0 == RawSkyline::default()
+        self.raw == RawSkyline::default()
     }
 }
 
@@ -234,29 +237,21 @@ impl TryFrom<RawSkyline> for SkylineEntry {
                 "skyline: both file and points are given; keep the one that holds".to_owned(),
             );
         }
-        // Checked here, where the reader knows the line; made when the document becomes a scenario.
-        source_from(&raw).map_err(|error| error.to_string())?;
-        Ok(SkylineEntry(raw))
+        // Made here, where the reader knows the line of what is wrong.
+        let points = raw.points.iter().map(|point| SkylinePoint {
+            azimuth: point.azimuth.into(),
+            altitude: point.altitude.into(),
+            name: point.name.clone().map(String::from),
+        });
+        let surveyed = Skyline::new(points.collect()).map_err(|error| error.to_string())?;
+        Ok(SkylineEntry { raw, surveyed })
     }
 }
 
 impl From<SkylineEntry> for RawSkyline {
     fn from(entry: SkylineEntry) -> RawSkyline {
-        entry.0
+        entry.raw
     }
-}
-
-fn source_from(raw: &RawSkyline) -> Result<SkylineSource, SkylineError> {
-    let points = raw
-        .points
-        .iter()
-        .map(|point| SkylinePoint {
-            azimuth: Angle::from_degrees(point.azimuth.into()),
-            altitude: Angle::from_degrees(point.altitude.into()),
-            part: point.part.clone().map(String::from),
-        })
-        .collect();
-    SkylineSource::from_points(points, raw.smooth)
 }
 
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
@@ -367,7 +362,6 @@ struct ViewEntry {
     turned: bool,
 }
 
-
 impl Document {
     /// Settles defaults and reads the skyline's file, if the document names one, in `folder`.
     pub(super) fn into_scenario(self, folder: &Path) -> Result<Scenario, SkylineError> {
@@ -380,7 +374,7 @@ impl Document {
             companions,
             season,
             site,
-            skyline: SkylineEntry(skyline),
+            skyline,
             conditions,
             sun_distance,
             view,
@@ -391,7 +385,7 @@ impl Document {
             scenario: remark,
             season: season.as_ref().and_then(|season| season.remark.clone()),
             site: site.remark.clone(),
-            skyline: skyline.remark.clone(),
+            skyline: skyline.raw.remark.clone(),
             conditions: conditions.remark.clone(),
             view: view.remark,
         };
@@ -405,13 +399,14 @@ impl Document {
             }),
             site: site.into_site(),
             zone,
-            skyline: match &skyline.file {
-                Some(name) => SkylineSource::from_file(folder, name, skyline.smooth)?,
-                None => source_from(&skyline)?,
+            skyline: match &skyline.raw.file {
+                Some(name) => SkylineSource::from_file(folder, name, skyline.raw.smooth)?,
+                None => SkylineSource::in_document(skyline.surveyed, skyline.raw.smooth),
             },
             conditions: conditions.into_conditions(),
-            sun_distance: sun_distance
-                .map_or(DEFAULT_SUN_DISTANCE, |angle| Angle::from_degrees(angle.into())),
+            sun_distance: sun_distance.map_or(DEFAULT_SUN_DISTANCE, |angle| {
+                Angle::from_degrees(angle.into())
+            }),
             view: View {
                 theme: view.theme,
                 turned: view.turned,
@@ -478,24 +473,24 @@ pub(super) fn subject_among_companions(body: Body) -> String {
 
 impl SiteEntry {
     fn into_site(self) -> Site {
-        let elevation_m = self.elevation_m.map_or(0.0, f64::from);
+        let usual = usual_site(
+            self.name.into(),
+            Angle::from_degrees(self.latitude.into()),
+            Angle::from_degrees(self.longitude.into()),
+            self.elevation_m.map_or(0.0, f64::from),
+        );
         Site {
-            name: self.name.into(),
-            latitude: Angle::from_degrees(self.latitude.into()),
-            longitude: Angle::from_degrees(self.longitude.into()),
-            elevation_m,
             height_above_surroundings_m: self
                 .height_above_surroundings_m
-                .map_or(0.0, f64::from),
+                .map_or(usual.height_above_surroundings_m, f64::from),
             air: Air {
-                pressure_hpa: self
-                    .pressure_hpa
-                    .map_or_else(|| standard_pressure_hpa(elevation_m), f64::from),
-                temperature_c: self.temperature_c.map_or(DEFAULT_TEMPERATURE_C, f64::from),
+                pressure_hpa: self.pressure_hpa.map_or(usual.air.pressure_hpa, f64::from),
+                temperature_c: self
+                    .temperature_c
+                    .map_or(usual.air.temperature_c, f64::from),
             },
-            extinction_mag: self
-                .extinction_mag
-                .map_or(DEFAULT_EXTINCTION_MAG, f64::from),
+            extinction_mag: self.extinction_mag.map_or(usual.extinction_mag, f64::from),
+            ..usual
         }
     }
 
@@ -530,27 +525,26 @@ impl SkylineEntry {
         let points = if file.is_some() {
             Vec::new()
         } else {
-            source
-                .points()
-                .iter()
-                .map(PointEntry::from_point)
+            let vertices = source.surveyed().vertices().iter();
+            vertices
+                .map(PointEntry::from_vertex)
                 .collect::<Result<_, _>>()?
         };
-        Ok(SkylineEntry(RawSkyline {
+        checked(RawSkyline {
             remark,
             file,
             smooth: source.is_smooth(),
             points,
-        }))
+        })
     }
 }
 
 impl PointEntry {
-    fn from_point(point: &SkylinePoint) -> Result<Self, String> {
+    fn from_vertex(vertex: &Vertex) -> Result<Self, String> {
         Ok(PointEntry {
-            azimuth: degrees(point.azimuth)?,
-            altitude: degrees(point.altitude)?,
-            part: point.part.clone().map(checked).transpose()?,
+            azimuth: degrees(vertex.azimuth)?,
+            altitude: degrees(vertex.altitude)?,
+            name: vertex.name.clone().map(checked).transpose()?,
         })
     }
 }
@@ -575,10 +569,7 @@ impl ConditionsEntry {
         }
     }
 
-    fn from_conditions(
-        conditions: &Conditions,
-        remark: Option<String>,
-    ) -> Result<Self, String> {
+    fn from_conditions(conditions: &Conditions, remark: Option<String>) -> Result<Self, String> {
         Ok(ConditionsEntry {
             remark,
             least_altitude: Some(degrees(conditions.least_altitude)?),
@@ -607,11 +598,9 @@ impl MoonEntry {
     fn into_rule(self) -> MoonRule {
         let default = MoonRule::default();
         MoonRule {
-            least_distance: self
-                .least_distance
-                .map_or(default.least_distance, |given| {
-                    Angle::from_degrees(given.into())
-                }),
+            least_distance: self.least_distance.map_or(default.least_distance, |given| {
+                Angle::from_degrees(given.into())
+            }),
             unless_lit_below: self
                 .unless_lit_below
                 .map_or(default.unless_lit_below, f64::from),

@@ -6,10 +6,10 @@
 //!   the field, naming it, rather than lose it on saving.
 //! - Where a field changes its meaning or its name, the version goes up: the new struct goes into a new module `v2`, with
 //!   `impl From<v1::Document> for v2::Document`; here `1 => read::<v1::Document>(text).map(v2::Document::from)` joins the
-//!   line for `2`, [`Newest`] and [`NEWEST_VERSION`] move on. The older struct stays as it is, and a file of each
+//!   line for `2`, `Newest` and [`NEWEST_VERSION`] move on. The older struct stays as it is, and a file of each
 //!   version stays among the tests.
 
-use ron::error::{Error, SpannedError, SpannedResult};
+use ron::error::{Error, Position, SpannedError, SpannedResult};
 use ron::extensions::Extensions;
 use ron::ser::PrettyConfig;
 use serde::de::{Deserializer, IgnoredAny};
@@ -29,6 +29,8 @@ const DEEPEST_NESTING: usize = 32;
 /// Structs below this level are written on one line each.
 const INDENTED_LEVELS: usize = 3;
 
+const ENDS_TOO_EARLY: &str = "the text ends too early: a closing bracket or quote is missing";
+
 fn read<'de, T: Deserialize<'de>>(text: &'de str) -> SpannedResult<T> {
     options().from_str(text)
 }
@@ -41,40 +43,55 @@ fn options() -> ron::Options {
 
 /// Reads any version and migrates it to the newest.
 pub(super) fn parse(text: &str, origin: &str) -> Result<Newest, ScenarioError> {
-    let version = match read::<VersionOnly>(text) {
-        Ok(probe) => probe.version,
-        // The struct knows better what was expected where the text went wrong.
-        Err(error) => {
-            let error = match error.code {
-                Error::MissingStructField { .. } => error,
-                _ => read::<Newest>(text).err().unwrap_or(error),
-            };
-            return Err(document_error(origin, error));
-        }
+    let probe = match read::<VersionAt>(text) {
+        Err(error) => error,
+        // Not reached: the probe fails at the version, or for want of one.
+        Ok(_) => return read(text).map_err(|error| document_error(text, origin, error)),
     };
-    match version {
-        1 => read::<v1::Document>(text).map_err(|error| document_error(origin, error)),
-        0 => Err(error_at::<VersionAt>(
-            text,
-            origin,
-            format!("there is no version 0: use version: {NEWEST_VERSION}"),
-        )),
-        found => {
-            let (line, column) = position::<VersionAt>(text);
-            Err(ScenarioError::TooNew {
-                origin: origin.to_owned(),
-                line,
-                column,
-                found,
-                newest: NEWEST_VERSION,
-            })
-        }
+    let (line, column) = (probe.span.start.line, probe.span.start.col);
+    let Error::Message(found) = &probe.code else {
+        let about_version = matches!(
+            probe.code,
+            Error::MissingStructField { .. } | Error::ExceededRecursionLimit
+        );
+        // The struct knows better what was expected where the text went wrong.
+        let error = if about_version {
+            probe
+        } else {
+            read::<Newest>(text).err().unwrap_or(probe)
+        };
+        return Err(document_error(text, origin, error));
+    };
+    match found.parse::<u32>() {
+        Ok(1) => read::<v1::Document>(text).map_err(|error| document_error(text, origin, error)),
+        Ok(found) if found > NEWEST_VERSION => Err(ScenarioError::TooNew {
+            origin: origin.to_owned(),
+            line,
+            column,
+            found,
+            newest: NEWEST_VERSION,
+        }),
+        _ => Err(ScenarioError::Document {
+            origin: origin.to_owned(),
+            line,
+            column,
+            message: format!("there is no version {found}: use version: {NEWEST_VERSION}"),
+        }),
     }
 }
 
 /// A complaint about the companions, with their place in the text.
 pub(super) fn companions_error(text: &str, origin: &str, message: String) -> ScenarioError {
-    error_at::<CompanionsAt>(text, origin, message)
+    let (line, column) = match read::<CompanionsAt>(text) {
+        Err(error) => (error.span.start.line, error.span.start.col),
+        Ok(_) => (1, 1),
+    };
+    ScenarioError::Document {
+        origin: origin.to_owned(),
+        line,
+        column,
+        message,
+    }
 }
 
 /// The document as text: `Scenario(` with every part on its own line, points of the skyline one a line.
@@ -89,60 +106,33 @@ pub(super) fn print<T: Serialize>(document: &T) -> Result<String, String> {
         .map_err(|error| error.to_string())
 }
 
-#[derive(Deserialize)]
-#[serde(rename = "Scenario")]
-struct VersionOnly {
-    version: u32,
-}
-
-/// Fails where it stands: the reader's complaint then tells the place of a field.
-struct Marker;
-
-impl<'de> Deserialize<'de> for Marker {
-    fn deserialize<D: Deserializer<'de>>(deserializer: D) -> Result<Self, D::Error> {
-        IgnoredAny::deserialize(deserializer)?;
-        Err(de::Error::custom("here"))
-    }
-}
-
+/// Fails at the version with its number as the message, so that what follows need not be of a kind known here.
 #[derive(Deserialize)]
 #[serde(rename = "Scenario")]
 struct VersionAt {
-    #[serde(rename = "version")]
-    _version: Marker,
+    #[serde(rename = "version", deserialize_with = "stop_at_number")]
+    _version: (),
 }
 
+fn stop_at_number<'de, D: Deserializer<'de>>(deserializer: D) -> Result<(), D::Error> {
+    Err(de::Error::custom(i64::deserialize(deserializer)?))
+}
+
+/// Fails at the companions, to tell their place.
 #[derive(Deserialize)]
 #[serde(rename = "Scenario")]
 struct CompanionsAt {
-    #[serde(rename = "companions")]
-    _companions: Marker,
+    #[serde(rename = "companions", deserialize_with = "stop_here")]
+    _companions: (),
 }
 
-/// Line and column of the field that `T` marks.
-fn position<'de, T: Deserialize<'de>>(text: &'de str) -> (usize, usize) {
-    match read::<T>(text) {
-        Err(error) => (error.span.start.line, error.span.start.col),
-        Ok(_) => (1, 1),
-    }
-}
-
-fn error_at<'de, T: Deserialize<'de>>(
-    text: &'de str,
-    origin: &str,
-    message: String,
-) -> ScenarioError {
-    let (line, column) = position::<T>(text);
-    ScenarioError::Document {
-        origin: origin.to_owned(),
-        line,
-        column,
-        message,
-    }
+fn stop_here<'de, D: Deserializer<'de>>(deserializer: D) -> Result<(), D::Error> {
+    IgnoredAny::deserialize(deserializer)?;
+    Err(de::Error::custom("here"))
 }
 
 /// The reader's complaint in words that help whoever wrote the text.
-fn document_error(origin: &str, error: SpannedError) -> ScenarioError {
+fn document_error(text: &str, origin: &str, error: SpannedError) -> ScenarioError {
     let place = error.span.start;
     let message = match &error.code {
         Error::ExceededRecursionLimit => format!(
@@ -164,7 +154,12 @@ fn document_error(origin: &str, error: SpannedError) -> ScenarioError {
         Error::DuplicateStructField { field, .. } => {
             format!("field {field} is given twice: keep one")
         }
-        Error::Eof => "the text ends too early: a closing bracket or quote is missing".to_owned(),
+        Error::Eof | Error::ExpectedStringEnd => ENDS_TOO_EARLY.to_owned(),
+        Error::TrailingCharacters => {
+            "something stands after the closing bracket of the scenario: take it away".to_owned()
+        }
+        // What is expected where nothing more stands is what is missing.
+        _ if error.span.end == end_of(text) => ENDS_TOO_EARLY.to_owned(),
         other => first_lower(&other.to_string()),
     };
     ScenarioError::Document {
@@ -172,6 +167,15 @@ fn document_error(origin: &str, error: SpannedError) -> ScenarioError {
         line: place.line,
         column: place.col,
         message,
+    }
+}
+
+/// The place after the last letter.
+fn end_of(text: &str) -> Position {
+    let last_line = text.rsplit('\n').next().unwrap_or(text);
+    Position {
+        line: 1 + text.matches('\n').count(),
+        col: 1 + last_line.chars().count(),
     }
 }
 

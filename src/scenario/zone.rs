@@ -147,7 +147,8 @@ impl Zone {
 
 /// The same count of days as chrono's date and time, to the second.
 fn naive(days_since_j2000: f64) -> Result<NaiveDateTime, CalendarError> {
-    let seconds = (days_since_j2000 * crate::sky::time::SECONDS_PER_DAY + J2000_UNIX_SECONDS).round();
+    let seconds =
+        (days_since_j2000 * crate::sky::time::SECONDS_PER_DAY + J2000_UNIX_SECONDS).round();
     // Within 100 000 years of 1970 the cast is exact; NaN is not among them.
     if !(-3.2e12..3.2e12).contains(&seconds) {
         return Err(CalendarError::OutOfRange);

@@ -25,7 +25,11 @@ impl Default for Limits {
     /// A binocular field of 6 degrees holds both with room to spare (common practice, no source).
     fn default() -> Self {
         let five = Angle::from_degrees(5.0);
-        Limits { planets: five, moon: five, stars: Angle::from_degrees(3.0) }
+        Limits {
+            planets: five,
+            moon: five,
+            stars: Angle::from_degrees(3.0),
+        }
     }
 }
 
@@ -48,7 +52,11 @@ pub fn close_approaches(
 ) -> Result<Vec<Event>, SkyError> {
     let mut partners: Vec<(Other, Angle, Option<&Star>)> = Vec::new();
     for &other in others.iter().filter(|&&other| other != body) {
-        let limit = if other == Body::Moon { limits.moon } else { limits.planets };
+        let limit = if other == Body::Moon {
+            limits.moon
+        } else {
+            limits.planets
+        };
         partners.push((Other::Body(other), limit, None));
     }
     for star in stars {
@@ -93,11 +101,16 @@ pub fn close_approaches(
                 let start = instant.days() - STEP_DAYS;
                 let at = |days: f64| -> Result<f64, SkyError> {
                     let instant = Tt::from_days(days);
-                    Ok(opening(motion(body, instant)?, partner_motion(other, *star, instant)?))
+                    Ok(opening(
+                        motion(body, instant)?,
+                        partner_motion(other, *star, instant)?,
+                    ))
                 };
-                let nearest = Tt::from_days(root((start, a), (instant.days(), b), TOLERANCE_DAYS, at)?);
-                let separation =
-                    motion(body, nearest)?.0.separation(partner_motion(other, *star, nearest)?.0);
+                let nearest =
+                    Tt::from_days(root((start, a), (instant.days(), b), TOLERANCE_DAYS, at)?);
+                let separation = motion(body, nearest)?
+                    .0
+                    .separation(partner_motion(other, *star, nearest)?.0);
                 if separation < *limit && span.contains(nearest) {
                     found.push(Event {
                         body,

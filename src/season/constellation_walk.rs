@@ -65,7 +65,11 @@ impl Walk {
             let entered = Constellation::at_icrs(here);
             if entered != inside {
                 let sign = |days: f64| -> Result<f64, SkyError> {
-                    Ok(if Constellation::at_icrs(direction(days)?) == inside { -1.0 } else { 1.0 })
+                    Ok(if Constellation::at_icrs(direction(days)?) == inside {
+                        -1.0
+                    } else {
+                        1.0
+                    })
                 };
                 // The bracket ends on the far side: the constellation found is the one entered.
                 let instant = root((days, -1.0), (next, 1.0), TOLERANCE_DAYS, sign)?;

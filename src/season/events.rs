@@ -133,11 +133,16 @@ impl Look {
     }
 
     fn from(vantage: &Vantage<'_>, body: Body) -> Result<Self, SkyError> {
-        Ok(Look { planet: vantage.place(body)?, sun: vantage.place(Body::Sun)? })
+        Ok(Look {
+            planet: vantage.place(body)?,
+            sun: vantage.place(Body::Sun)?,
+        })
     }
 
     fn from_sun(&self) -> f64 {
-        (self.planet.ecliptic_of_date().longitude - self.sun.ecliptic_of_date().longitude).signed().radians()
+        (self.planet.ecliptic_of_date().longitude - self.sun.ecliptic_of_date().longitude)
+            .signed()
+            .radians()
     }
 
     fn elongation_rate(&self) -> f64 {
@@ -145,7 +150,9 @@ impl Look {
     }
 
     fn sun_distance_rate(&self) -> f64 {
-        self.planet.heliocentric_now.dot(self.planet.heliocentric_velocity_now)
+        self.planet
+            .heliocentric_now
+            .dot(self.planet.heliocentric_velocity_now)
     }
 
     fn magnitude(&self) -> f64 {
@@ -155,7 +162,9 @@ impl Look {
     /// Only what `kinds` need is computed; the rest stays 0 and is not looked at.
     fn sample(&self, days: f64, kinds: Kinds) -> Sample {
         use EventKind as K;
-        let when = |wanted: &[EventKind], value: &dyn Fn() -> f64| if kinds.any(wanted) { value() } else { 0.0 };
+        let when = |wanted: &[EventKind], value: &dyn Fn() -> f64| {
+            if kinds.any(wanted) { value() } else { 0.0 }
+        };
         Sample {
             days,
             from_sun: when(
@@ -175,11 +184,16 @@ impl Look {
             ra_rate: when(&[K::RaStationRetrograde, K::RaStationDirect], &|| {
                 self.planet.equatorial_rate().longitude.radians()
             }),
-            elongation_rate: when(&[K::GreatestElongationEast, K::GreatestElongationWest], &|| {
-                self.elongation_rate()
+            elongation_rate: when(
+                &[K::GreatestElongationEast, K::GreatestElongationWest],
+                &|| self.elongation_rate(),
+            ),
+            distance_rate: when(&[K::ClosestApproach], &|| {
+                self.planet.geometric_distance_rate()
             }),
-            distance_rate: when(&[K::ClosestApproach], &|| self.planet.geometric_distance_rate()),
-            light_distance_rate: when(&[K::ClosestApproachLightTime], &|| self.planet.distance_rate()),
+            light_distance_rate: when(&[K::ClosestApproachLightTime], &|| {
+                self.planet.distance_rate()
+            }),
             sun_distance_rate: when(&[K::Perihelion], &|| self.sun_distance_rate()),
             magnitude: when(&[K::GreatestBrightness], &|| self.magnitude()),
         }
@@ -215,40 +229,96 @@ impl Follower<'_> {
     fn between(&mut self, a: Sample, b: Sample, found: &mut Vec<Event>) -> Result<(), SkyError> {
         use EventKind as K;
         self.configurations(a, b, found)?;
-        self.rate_root(a, b, |s| s.longitude_rate, |look| look.planet.ecliptic_rate().longitude.radians(),
+        self.rate_root(
+            a,
+            b,
+            |s| s.longitude_rate,
+            |look| look.planet.ecliptic_rate().longitude.radians(),
             |falling, look| {
-                let kind = if falling { K::StationRetrograde } else { K::StationDirect };
-                Some((kind, EventValue::Longitude(look.planet.ecliptic_of_date().longitude)))
-            }, found)?;
-        self.rate_root(a, b, |s| s.ra_rate, |look| look.planet.equatorial_rate().longitude.radians(),
-            |falling, look| {
-                let kind = if falling { K::RaStationRetrograde } else { K::RaStationDirect };
-                Some((kind, EventValue::RightAscension(look.planet.equatorial_of_date().longitude)))
-            }, found)?;
-        if self.body.is_inner_planet() {
-            self.rate_root(a, b, |s| s.elongation_rate, Look::elongation_rate, |falling, look| {
-                let kind = match look.planet.side_of(&look.sun) {
-                    Side::East => K::GreatestElongationEast,
-                    Side::West => K::GreatestElongationWest,
+                let kind = if falling {
+                    K::StationRetrograde
+                } else {
+                    K::StationDirect
                 };
-                falling.then(|| (kind, EventValue::Elongation(look.planet.separation(&look.sun))))
-            }, found)?;
+                Some((
+                    kind,
+                    EventValue::Longitude(look.planet.ecliptic_of_date().longitude),
+                ))
+            },
+            found,
+        )?;
+        self.rate_root(
+            a,
+            b,
+            |s| s.ra_rate,
+            |look| look.planet.equatorial_rate().longitude.radians(),
+            |falling, look| {
+                let kind = if falling {
+                    K::RaStationRetrograde
+                } else {
+                    K::RaStationDirect
+                };
+                Some((
+                    kind,
+                    EventValue::RightAscension(look.planet.equatorial_of_date().longitude),
+                ))
+            },
+            found,
+        )?;
+        if self.body.is_inner_planet() {
+            self.rate_root(
+                a,
+                b,
+                |s| s.elongation_rate,
+                Look::elongation_rate,
+                |falling, look| {
+                    let kind = match look.planet.side_of(&look.sun) {
+                        Side::East => K::GreatestElongationEast,
+                        Side::West => K::GreatestElongationWest,
+                    };
+                    falling.then(|| {
+                        (
+                            kind,
+                            EventValue::Elongation(look.planet.separation(&look.sun)),
+                        )
+                    })
+                },
+                found,
+            )?;
         }
-        self.rate_root(a, b, |s| s.distance_rate, |look| look.planet.geometric_distance_rate(),
+        self.rate_root(
+            a,
+            b,
+            |s| s.distance_rate,
+            |look| look.planet.geometric_distance_rate(),
             |falling, look| {
                 let value = EventValue::DistanceAu(look.planet.geometric_distance_au());
                 (!falling).then_some((K::ClosestApproach, value))
-            }, found)?;
-        self.rate_root(a, b, |s| s.light_distance_rate, |look| look.planet.distance_rate(),
+            },
+            found,
+        )?;
+        self.rate_root(
+            a,
+            b,
+            |s| s.light_distance_rate,
+            |look| look.planet.distance_rate(),
             |falling, look| {
                 let value = EventValue::DistanceAu(look.planet.distance_au);
                 (!falling).then_some((K::ClosestApproachLightTime, value))
-            }, found)?;
-        self.rate_root(a, b, |s| s.sun_distance_rate, Look::sun_distance_rate,
+            },
+            found,
+        )?;
+        self.rate_root(
+            a,
+            b,
+            |s| s.sun_distance_rate,
+            Look::sun_distance_rate,
             |falling, look| {
                 let value = EventValue::DistanceAu(look.planet.heliocentric_now.norm());
                 (!falling).then_some((K::Perihelion, value))
-            }, found)?;
+            },
+            found,
+        )?;
         if let Some(walk) = &mut self.walker {
             walk.advance(self.sky, self.body, a.days, b.days, found)?;
         }
@@ -341,14 +411,26 @@ impl Follower<'_> {
         Ok(())
     }
 
-    fn brightest(&self, a: Sample, b: Sample, c: Sample, found: &mut Vec<Event>) -> Result<(), SkyError> {
+    fn brightest(
+        &self,
+        a: Sample,
+        b: Sample,
+        c: Sample,
+        found: &mut Vec<Event>,
+    ) -> Result<(), SkyError> {
         if !self.kinds.contains(EventKind::GreatestBrightness)
             || !(b.magnitude < a.magnitude && b.magnitude <= c.magnitude)
         {
             return Ok(());
         }
         let at = |days: f64| Ok::<_, SkyError>(Look::at(self.sky, self.body, days)?.magnitude());
-        let (days, least) = minimum(a.days, (b.days, b.magnitude), c.days, MINIMUM_TOLERANCE_DAYS, at)?;
+        let (days, least) = minimum(
+            a.days,
+            (b.days, b.magnitude),
+            c.days,
+            MINIMUM_TOLERANCE_DAYS,
+            at,
+        )?;
         let step = step_days(self.body);
         let count = (brightest_within_days(self.body) / step) as i32;
         for k in 1..=count {
@@ -414,7 +496,10 @@ pub fn for_each_event(
             let vantage = sky.geocentre(Tt::from_days(days))?;
             let sun = vantage.place(Body::Sun)?;
             for follower in followers.iter_mut().filter(|f| on_grid(f.body, part)) {
-                let look = Look { planet: vantage.place(follower.body)?, sun };
+                let look = Look {
+                    planet: vantage.place(follower.body)?,
+                    sun,
+                };
                 follower.step(look.sample(days, kinds), &mut waiting)?;
             }
         }
@@ -439,7 +524,12 @@ fn hand_on(
     span: Span,
     on_event: &mut impl FnMut(Event) -> ControlFlow<()>,
 ) -> ControlFlow<()> {
-    waiting.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()).then(a.body.cmp(&b.body)));
+    waiting.sort_by(|a, b| {
+        a.instant
+            .days()
+            .total_cmp(&b.instant.days())
+            .then(a.body.cmp(&b.body))
+    });
     let count = waiting.partition_point(|event| event.instant < settled);
     for event in waiting.drain(..count) {
         if span.contains(event.instant) {
@@ -453,7 +543,12 @@ fn hand_on(
 ///
 /// # Errors
 /// A span that the sky does not cover.
-pub fn events(sky: &Sky, bodies: &[Body], kinds: Kinds, span: Span) -> Result<Vec<Event>, SkyError> {
+pub fn events(
+    sky: &Sky,
+    bodies: &[Body],
+    kinds: Kinds,
+    span: Span,
+) -> Result<Vec<Event>, SkyError> {
     let mut all = Vec::new();
     for_each_event(sky, bodies, kinds, span, |event| {
         all.push(event);

@@ -5,7 +5,7 @@
 
 use super::search::{minimum, root};
 use super::types::Span;
-use crate::sky::place::{Place, Sky, SkyError, AU_KM};
+use crate::sky::place::{AU_KM, Place, Sky, SkyError};
 use crate::sky::{Angle, Body, Site, Tt};
 
 /// Between samples of an altitude: 20 minutes.
@@ -32,7 +32,8 @@ impl Threshold {
             (Threshold::RiseSet, Body::Sun) => Angle::from_degrees(-50.0 / 60.0),
             (Threshold::RiseSet, Body::Moon) => {
                 let radius_au = Body::Moon.radius_km() / AU_KM;
-                let semidiameter = Angle::from_radians(libm::asin((radius_au / place.distance_au).min(1.0)));
+                let semidiameter =
+                    Angle::from_radians(libm::asin((radius_au / place.distance_au).min(1.0)));
                 Angle::from_degrees(-34.0 / 60.0) - semidiameter
             }
             (Threshold::RiseSet, _) => Angle::from_degrees(-34.0 / 60.0),
@@ -115,8 +116,14 @@ pub fn altitude_crossings(
         if span.contains(instant) {
             let vantage = sky.observer(site, instant)?;
             let place = vantage.place(body)?;
-            let azimuth = vantage.horizontal(place.apparent).map_or(Angle::ZERO, |seen| seen.azimuth);
-            crossings.push(AltitudeCrossing { instant, upward: a.1 < 0.0, azimuth });
+            let azimuth = vantage
+                .horizontal(place.apparent)
+                .map_or(Angle::ZERO, |seen| seen.azimuth);
+            crossings.push(AltitudeCrossing {
+                instant,
+                upward: a.1 < 0.0,
+                azimuth,
+            });
         }
     }
     crossings.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()));
@@ -137,7 +144,10 @@ pub fn transits(sky: &Sky, site: &Site, body: Body, span: Span) -> Result<Vec<Tr
     let count = (span.days() * 4.0).ceil().max(1.0) as usize;
     let step = span.days() / count as f64;
     let mut transits = Vec::new();
-    let mut before = (span.from.days() - step, hour_angle(span.from.days() - step)?);
+    let mut before = (
+        span.from.days() - step,
+        hour_angle(span.from.days() - step)?,
+    );
     for k in 0..count + 2 {
         let days = span.from.days() + k as f64 * step;
         let here = (days, hour_angle(days)?);
@@ -146,7 +156,10 @@ pub fn transits(sky: &Sky, site: &Site, body: Body, span: Span) -> Result<Vec<Tr
             if span.contains(instant) {
                 let vantage = sky.observer(site, instant)?;
                 let seen = vantage.horizontal(vantage.place(body)?.apparent);
-                transits.push(Transit { instant, altitude: seen.map_or(Angle::ZERO, |seen| seen.altitude) });
+                transits.push(Transit {
+                    instant,
+                    altitude: seen.map_or(Angle::ZERO, |seen| seen.altitude),
+                });
             }
         }
         before = here;
@@ -200,7 +213,10 @@ impl HorizonKind {
     /// Dusks and dawns are the Sun's alone.
     #[must_use]
     pub const fn is_twilight(self) -> bool {
-        !matches!(self, HorizonKind::Rise | HorizonKind::UpperTransit | HorizonKind::Set)
+        !matches!(
+            self,
+            HorizonKind::Rise | HorizonKind::UpperTransit | HorizonKind::Set
+        )
     }
 
     /// Threshold and sense of a passage; a transit has none.
@@ -242,28 +258,43 @@ pub fn horizon_events(
     span: Span,
 ) -> Result<Vec<HorizonEvent>, SkyError> {
     let mut found = Vec::new();
-    let kinds = kinds.iter().copied().filter(|kind| body == Body::Sun || !kind.is_twilight());
+    let kinds = kinds
+        .iter()
+        .copied()
+        .filter(|kind| body == Body::Sun || !kind.is_twilight());
     let mut thresholds: Vec<(Threshold, Vec<(HorizonKind, bool)>)> = Vec::new();
     for kind in kinds {
         match kind.passage() {
-            None => found.extend(transits(sky, site, body, span)?.into_iter().map(|transit| HorizonEvent {
-                body,
-                kind,
-                instant: transit.instant,
-                value: transit.altitude,
+            None => found.extend(transits(sky, site, body, span)?.into_iter().map(|transit| {
+                HorizonEvent {
+                    body,
+                    kind,
+                    instant: transit.instant,
+                    value: transit.altitude,
+                }
             })),
             // Rise and set, dusk and dawn share the search for their threshold.
-            Some((threshold, upward)) => match thresholds.iter_mut().find(|(known, _)| *known == threshold) {
-                Some((_, kinds)) => kinds.push((kind, upward)),
-                None => thresholds.push((threshold, vec![(kind, upward)])),
-            },
+            Some((threshold, upward)) => {
+                match thresholds.iter_mut().find(|(known, _)| *known == threshold) {
+                    Some((_, kinds)) => kinds.push((kind, upward)),
+                    None => thresholds.push((threshold, vec![(kind, upward)])),
+                }
+            }
         }
     }
     for (threshold, kinds) in thresholds {
         for crossing in altitude_crossings(sky, site, body, threshold, span)? {
-            found.extend(kinds.iter().filter(|(_, upward)| *upward == crossing.upward).map(|&(kind, _)| {
-                HorizonEvent { body, kind, instant: crossing.instant, value: crossing.azimuth }
-            }));
+            found.extend(
+                kinds
+                    .iter()
+                    .filter(|(_, upward)| *upward == crossing.upward)
+                    .map(|&(kind, _)| HorizonEvent {
+                        body,
+                        kind,
+                        instant: crossing.instant,
+                        value: crossing.azimuth,
+                    }),
+            );
         }
     }
     found.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()));

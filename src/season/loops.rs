@@ -54,7 +54,10 @@ pub fn loops(sky: &Sky, body: Body, span: Span) -> Result<Vec<Loop>, SkyError> {
         if start.kind != EventKind::StationRetrograde {
             continue;
         }
-        let Some(end) = events[index..].iter().find(|event| event.kind == EventKind::StationDirect) else {
+        let Some(end) = events[index..]
+            .iter()
+            .find(|event| event.kind == EventKind::StationDirect)
+        else {
             continue;
         };
         if span.contains(start.instant) || span.contains(end.instant) {
@@ -68,14 +71,18 @@ fn one_loop(sky: &Sky, start: &Event, end: &Event, events: &[Event]) -> Result<L
     let middle = events
         .iter()
         .find(|event| {
-            matches!(event.kind, EventKind::Opposition | EventKind::InferiorConjunction)
-                && start.instant < event.instant
+            matches!(
+                event.kind,
+                EventKind::Opposition | EventKind::InferiorConjunction
+            ) && start.instant < event.instant
                 && event.instant < end.instant
         })
         .cloned();
     let centre = middle
         .as_ref()
-        .map_or(0.5 * (start.instant.days() + end.instant.days()), |event| event.instant.days());
+        .map_or(0.5 * (start.instant.days() + end.instant.days()), |event| {
+            event.instant.days()
+        });
     let nearest = |kind: EventKind| {
         events
             .iter()
@@ -87,7 +94,9 @@ fn one_loop(sky: &Sky, start: &Event, end: &Event, events: &[Event]) -> Result<L
             // Farther than this it belongs to another loop.
             .filter(|event| (event.instant.days() - centre).abs() < LONGEST_RETROGRADE_DAYS / 2.0)
     };
-    let largest_diameter = match nearest(EventKind::ClosestApproachLightTime).map(|event| event.value) {
+    let largest_diameter = match nearest(EventKind::ClosestApproachLightTime)
+        .map(|event| event.value)
+    {
         Some(EventValue::DistanceAu(distance)) => Some(semidiameter(start.body, distance) * 2.0),
         _ => None,
     };
@@ -123,7 +132,14 @@ fn brightest_between(sky: &Sky, start: &Event, end: &Event) -> Result<Event, Sky
         days_of(best.0)
     } else {
         let value_at = |days: f64| Ok::<_, SkyError>(at(days)?.value);
-        minimum(days_of(best.0 - 1), (days_of(best.0), best.1), days_of(best.0 + 1), 2e-4, value_at)?.0
+        minimum(
+            days_of(best.0 - 1),
+            (days_of(best.0), best.1),
+            days_of(best.0 + 1),
+            2e-4,
+            value_at,
+        )?
+        .0
     };
     let flagged = at(days)?;
     Ok(Event {
@@ -154,7 +170,9 @@ fn crossing(sky: &Sky, start: &Event, end: &Event) -> Result<Option<TrackCrossin
     let from = start.instant.days() - reach;
     let to = end.instant.days() + reach;
     let step = (to - from) / SAMPLES as f64;
-    let direction = |days: f64| -> Result<Place, SkyError> { sky.geocentre(Tt::from_days(days))?.place(start.body) };
+    let direction = |days: f64| -> Result<Place, SkyError> {
+        sky.geocentre(Tt::from_days(days))?.place(start.body)
+    };
     let mut path = Vec::with_capacity(SAMPLES + 1);
     for k in 0..=SAMPLES {
         path.push(direction(from + k as f64 * step)?.direction);
@@ -179,7 +197,9 @@ fn crossing(sky: &Sky, start: &Event, end: &Event) -> Result<Option<TrackCrossin
             }
         }
     }
-    let Some((mut first, mut second)) = widest else { return Ok(None) };
+    let Some((mut first, mut second)) = widest else {
+        return Ok(None);
+    };
     // Newton's method on the two instants: the tracks are smooth and the start is within a step.
     for _ in 0..8 {
         let (a, b) = (direction(first)?, direction(second)?);

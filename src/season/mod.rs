@@ -2,10 +2,10 @@
 //!
 //! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
 
+pub mod close;
 mod compute;
 mod conditions;
 mod constellation_walk;
-pub mod close;
 pub mod events;
 pub mod horizon;
 mod loops;
@@ -14,10 +14,11 @@ mod search;
 mod track;
 mod types;
 
-pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 pub use compute::{next_season, season};
+pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 pub use loops::{loops, synodic_days};
 pub use track::{strip_frame, track, track_step_days};
 pub use types::{
-    Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing, TrackPoint,
+    Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing,
+    TrackPoint,
 };

@@ -26,7 +26,10 @@ impl OutlookNight {
     /// The first of a kind among the subject's events.
     #[must_use]
     pub fn of_subject(&self, kind: HorizonKind) -> Option<HorizonEvent> {
-        self.subject.iter().copied().find(|event| event.kind == kind)
+        self.subject
+            .iter()
+            .copied()
+            .find(|event| event.kind == kind)
     }
 }
 
@@ -36,7 +39,10 @@ pub fn night_of(sky: &Sky, site: &Site, julian_day_number: i32) -> Span {
     // A Julian day begins at noon of its date.
     let noon = f64::from(julian_day_number) - J2000_JD - site.longitude.signed().degrees() / 360.0;
     let tt = |days: f64| -> Tt { sky.tables().tt_from_utc(Utc::from_days(days)) };
-    Span { from: tt(noon), to: tt(noon + 1.0) }
+    Span {
+        from: tt(noon),
+        to: tt(noon + 1.0),
+    }
 }
 
 /// Sun and subject in the night that begins on the date with this Julian Day Number.
@@ -50,7 +56,11 @@ pub fn outlook_night(
     julian_day_number: i32,
 ) -> Result<OutlookNight, SkyError> {
     let span = night_of(sky, site, julian_day_number);
-    let daily = [HorizonKind::Rise, HorizonKind::UpperTransit, HorizonKind::Set];
+    let daily = [
+        HorizonKind::Rise,
+        HorizonKind::UpperTransit,
+        HorizonKind::Set,
+    ];
     Ok(OutlookNight {
         span,
         sun: horizon_events(sky, site, Body::Sun, &HorizonKind::ALL, span)?,

@@ -30,7 +30,11 @@ pub(crate) fn root<E>(
             (c, fc, b, fb) = (b, fb, a, fa);
         }
         (a, fa) = (x, fx);
-        let (best, f_best) = if fa.abs() < fb.abs() { (a, fa) } else { (b, fb) };
+        let (best, f_best) = if fa.abs() < fb.abs() {
+            (a, fa)
+        } else {
+            (b, fb)
+        };
         let width = (b - a).abs();
         if f_best == 0.0 || width <= tolerance {
             return Ok(best);
@@ -44,7 +48,11 @@ pub(crate) fn root<E>(
         };
         // At least half a tolerance off the end, so that the last step closes the bracket.
         let least = 0.5 * tolerance / width;
-        share = if share.is_finite() { share.clamp(least, 1.0 - least) } else { 0.5 };
+        share = if share.is_finite() {
+            share.clamp(least, 1.0 - least)
+        } else {
+            0.5
+        };
     }
     Ok(if fa.abs() < fb.abs() { a } else { b })
 }
@@ -88,13 +96,25 @@ pub(crate) fn minimum<E>(
             before_last = if x < middle { high - x } else { low - x };
             step = GOLDEN * before_last;
         }
-        let u = if step.abs() >= tolerance { x + step } else { x + tolerance.copysign(step) };
+        let u = if step.abs() >= tolerance {
+            x + step
+        } else {
+            x + tolerance.copysign(step)
+        };
         let fu = f(u)?;
         if fu <= fx {
-            if u < x { high = x } else { low = x }
+            if u < x {
+                high = x
+            } else {
+                low = x
+            }
             (v, fv, w, fw, x, fx) = (w, fw, x, fx, u, fu);
         } else {
-            if u < x { low = u } else { high = u }
+            if u < x {
+                low = u
+            } else {
+                high = u
+            }
             if fu <= fw || w == x {
                 (v, fv, w, fw) = (w, fw, u, fu);
             } else if fu <= fv || v == x || v == w {
@@ -127,7 +147,12 @@ mod tests {
             calls += 1;
             Ok::<_, Infallible>(libm::sin(x) - 0.1 * x)
         };
-        let Ok(x) = root((2.0, libm::sin(2.0) - 0.2), (4.0, libm::sin(4.0) - 0.4), 1e-7, f);
+        let Ok(x) = root(
+            (2.0, libm::sin(2.0) - 0.2),
+            (4.0, libm::sin(4.0) - 0.4),
+            1e-7,
+            f,
+        );
         assert!((libm::sin(x) - 0.1 * x).abs() < 1e-6);
         assert!(calls <= 8, "{calls} evaluations");
     }

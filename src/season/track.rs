@@ -1,10 +1,10 @@
 //! The path a body draws through a season, and the axes it is drawn on.
 
 use super::types::{Span, StripFrame, Track, TrackPoint};
+use crate::sky::Body;
 use crate::sky::frames::ReferenceFrame;
 use crate::sky::light::{MarsTerms, magnitude};
 use crate::sky::place::{Sky, SkyError};
-use crate::sky::Body;
 
 /// Most points a track may have; longer spans are sampled more coarsely.
 const MOST_POINTS: f64 = 4_000.0;
@@ -44,10 +44,14 @@ pub fn track(sky: &Sky, body: Body, span: Span) -> Result<Track, SkyError> {
             instant,
             direction: place.direction,
             distance_au: place.distance_au,
-            magnitude: (body != Body::Sun).then(|| magnitude(&place.geometry(), MarsTerms::Omit).value),
+            magnitude: (body != Body::Sun)
+                .then(|| magnitude(&place.geometry(), MarsTerms::Omit).value),
             longitude_rate_per_day: place.ecliptic_rate().longitude,
             elongation: place.separation(&vantage.place(Body::Sun)?),
         })
     };
-    Ok(Track { body, points: (0..=count).map(point).collect::<Result<_, SkyError>>()? })
+    Ok(Track {
+        body,
+        points: (0..=count).map(point).collect::<Result<_, SkyError>>()?,
+    })
 }

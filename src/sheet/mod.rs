@@ -1,8 +1,16 @@
-//! What is handed out: charts and tables as files. A scene becomes SVG or PNG; both look alike.
+//! What is handed out: charts and tables as files, and the brief. A scene becomes SVG or PNG; both look alike.
 
+mod brief;
 mod png;
+mod season_sheet;
+mod strip_words;
 mod svg;
 pub mod table;
+pub mod tables;
+pub mod words;
 
+pub use brief::brief;
 pub use png::{PngError, png};
+pub use season_sheet::{SeasonSheet, SheetError, printed_strip, season_sheet};
+pub use strip_words::{east_is_left, printed_view, strip_text};
 pub use svg::svg;

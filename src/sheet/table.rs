@@ -46,7 +46,9 @@ impl Cell {
     fn json(&self) -> String {
         match self {
             // A string always serialises; the quotes keep the file valid if it ever did not.
-            Cell::Text(text) => serde_json::to_string(text).unwrap_or_else(|_| String::from("\"\"")),
+            Cell::Text(text) => {
+                serde_json::to_string(text).unwrap_or_else(|_| String::from("\"\""))
+            }
             Cell::Number(value, _) if !value.is_finite() => String::from("null"),
             Cell::Number(..) | Cell::Digits(_) => self.plain(),
             Cell::Empty => String::from("null"),
@@ -77,11 +79,20 @@ impl<W: Write> TableWriter<W> {
     ///
     /// # Errors
     /// The sink's.
-    pub fn new(mut sink: W, columns: &'static [&'static str], format: TableFormat) -> io::Result<Self> {
+    pub fn new(
+        mut sink: W,
+        columns: &'static [&'static str],
+        format: TableFormat,
+    ) -> io::Result<Self> {
         if format == TableFormat::Csv {
             write_csv_line(&mut sink, columns.iter().map(|&name| name.to_owned()))?;
         }
-        Ok(TableWriter { sink, columns, format, rows: 0 })
+        Ok(TableWriter {
+            sink,
+            columns,
+            format,
+            rows: 0,
+        })
     }
 
     /// Writes a row; it has one cell a column.
@@ -93,7 +104,8 @@ impl<W: Write> TableWriter<W> {
         match self.format {
             TableFormat::Csv => write_csv_line(&mut self.sink, cells.iter().map(Cell::plain))?,
             TableFormat::Json => {
-                self.sink.write_all(if self.rows == 0 { b"[\n{" } else { b",\n{" })?;
+                self.sink
+                    .write_all(if self.rows == 0 { b"[\n{" } else { b",\n{" })?;
                 for (index, (name, cell)) in self.columns.iter().zip(cells).enumerate() {
                     let comma = if index == 0 { "" } else { "," };
                     write!(self.sink, "{comma}\"{name}\":{}", cell.json())?;
@@ -111,7 +123,8 @@ impl<W: Write> TableWriter<W> {
     /// The sink's.
     pub fn finish(mut self) -> io::Result<W> {
         if self.format == TableFormat::Json {
-            self.sink.write_all(if self.rows == 0 { b"[]\n" } else { b"\n]\n" })?;
+            self.sink
+                .write_all(if self.rows == 0 { b"[]\n" } else { b"\n]\n" })?;
         }
         self.sink.flush()?;
         Ok(self.sink)
@@ -150,7 +163,10 @@ mod tests {
     #[test]
     fn csv_survives_quotes_commas_and_line_breaks() {
         let odd = "a \"quoted\", odd\nname";
-        let text = written(TableFormat::Csv, &[[Cell::text(odd), Cell::Number(-0.000_01, 2)]]);
+        let text = written(
+            TableFormat::Csv,
+            &[[Cell::text(odd), Cell::Number(-0.000_01, 2)]],
+        );
         let mut reader = csv::Reader::from_reader(text.as_bytes());
         let row = reader.records().next().unwrap().unwrap();
         assert_eq!(&row[0], odd);
@@ -159,8 +175,12 @@ mod tests {
 
     #[test]
     fn json_is_an_array_of_objects() {
-        let rows = [[Cell::text("x\"y"), Cell::Empty], [Cell::text("z"), Cell::Digits("2461000.500000000".into())]];
-        let value: serde_json::Value = serde_json::from_str(&written(TableFormat::Json, &rows)).unwrap();
+        let rows = [
+            [Cell::text("x\"y"), Cell::Empty],
+            [Cell::text("z"), Cell::Digits("2461000.500000000".into())],
+        ];
+        let value: serde_json::Value =
+            serde_json::from_str(&written(TableFormat::Json, &rows)).unwrap();
         assert_eq!(value[0]["name"], "x\"y");
         assert!(value[0]["value_deg"].is_null());
         assert_eq!(value[1]["value_deg"], 2_461_000.5);

@@ -101,7 +101,8 @@ where
         quantum: f64,
         coefficients: Vec<[C; N]>,
     ) -> Option<Self> {
-        let whole = terms > 0 && !coefficients.is_empty() && coefficients.len() % terms == 0;
+        let whole =
+            terms > 0 && !coefficients.is_empty() && coefficients.len().is_multiple_of(terms);
         let length = (end - start) * terms as f64 / coefficients.len() as f64;
         (whole && length > 0.0 && length.is_finite()).then_some(Pieces {
             start,
@@ -138,5 +139,92 @@ where
     #[must_use]
     pub fn length(&self) -> f64 {
         self.length
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// T_0 to T_5 and their derivatives written out: NIST DLMF, table 18.6 and section 18.9.
+    #[test]
+    fn evaluates_single_polynomials_as_written_out() {
+        let x: f64 = 0.3;
+        let written = [
+            (1.0, 0.0),
+            (x, 1.0),
+            (2.0 * x.powi(2) - 1.0, 4.0 * x),
+            (4.0 * x.powi(3) - 3.0 * x, 12.0 * x.powi(2) - 3.0),
+            (
+                8.0 * x.powi(4) - 8.0 * x.powi(2) + 1.0,
+                32.0 * x.powi(3) - 16.0 * x,
+            ),
+            (
+                16.0 * x.powi(5) - 20.0 * x.powi(3) + 5.0 * x,
+                80.0 * x.powi(4) - 60.0 * x.powi(2) + 5.0,
+            ),
+        ];
+        for (degree, (value, derivative)) in written.into_iter().enumerate() {
+            let mut coefficients = vec![[0.0]; degree + 1];
+            coefficients[degree] = [1.0];
+            let ([v], [d]) = evaluate(&coefficients, x);
+            assert!((v - value).abs() < 1e-15, "T_{degree}: {v} for {value}");
+            assert!(
+                (d - derivative).abs() < 1e-14,
+                "T_{degree}': {d} for {derivative}"
+            );
+        }
+    }
+
+    /// exp(x) has the coefficients I_0(1), 2 I_1(1), 2 I_2(1), ..: Abramowitz and Stegun 1964, formula 9.6.34 and
+    /// table 9.8.
+    #[test]
+    fn fit_of_the_exponential_gives_bessel_coefficients() {
+        let samples: Vec<[f64; 1]> = nodes(12).map(|x| [x.exp()]).collect();
+        let coefficients = fit(&samples);
+        let bessel = [
+            1.266_065_877_8,
+            2.0 * 0.565_159_103_99,
+            2.0 * 0.135_747_669_8,
+        ];
+        for (k, expected) in bessel.into_iter().enumerate() {
+            assert!((coefficients[k][0] - expected).abs() < 1e-9, "{k}");
+        }
+        for x in [-1.0, -0.77, 0.0, 0.31, 1.0_f64] {
+            let ([value], [derivative]) = evaluate(&coefficients, x);
+            assert!((value - x.exp()).abs() < 1e-12);
+            assert!((derivative - x.exp()).abs() < 1e-10);
+        }
+    }
+
+    #[test]
+    fn fits_of_degree_zero_and_of_nothing_stay_as_they_are() {
+        assert_eq!(nodes(0).collect::<Vec<_>>(), [0.0]);
+        assert_eq!(fit(&[[7.0, 8.0]]), [[7.0, 8.0]]);
+        assert!(fit::<2>(&[]).is_empty());
+        assert_eq!(evaluate::<f64, 1>(&[], 0.5), ([0.0], [0.0]));
+    }
+
+    #[test]
+    fn pieces_scale_value_and_rate_and_end_where_they_say() {
+        // t on 10..20 and on 20..30 in units of 0.5: c0 is the middle, c1 half the length, both doubled.
+        let coefficients = vec![[30_i32], [10], [50], [10]];
+        let pieces = Pieces::new(10.0, 30.0, 2, 0.5, coefficients).expect("two whole pieces");
+        for t in [10.0, 13.0, 20.0, 27.5, 30.0] {
+            let ([value], [rate]) = pieces.at(t).expect("inside");
+            assert!(
+                (value - t).abs() < 1e-12 && (rate - 1.0).abs() < 1e-12,
+                "{t}: {value} {rate}"
+            );
+        }
+        assert_eq!(pieces.length(), 10.0);
+        assert!(
+            pieces.at(9.999).is_none()
+                && pieces.at(30.001).is_none()
+                && pieces.at(f64::NAN).is_none()
+        );
+        assert!(Pieces::new(0.0, 1.0, 2, 1.0, vec![[1.0], [2.0], [3.0]]).is_none());
+        assert!(Pieces::<f64, 1>::new(0.0, 1.0, 2, 1.0, vec![]).is_none());
+        assert!(Pieces::new(1.0, 0.0, 1, 1.0, vec![[1.0]]).is_none());
     }
 }

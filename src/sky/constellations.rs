@@ -41,19 +41,22 @@ const EDGE_STEP_DEGREES: f64 = 0.5;
 /// Origin of the boundaries, for `--version`.
 pub const SOURCE: &str = "IAU boundaries of B1875.0, Roman 1987 (CDS VI/42)";
 
+/// Right ascension in hours and declination in degrees, B1875.0.
+type Place = (f64, f64);
+
 /// What a constellation is called and where its name may stand.
 struct Names {
     abbreviation: &'static str,
     name: &'static str,
     genitive: &'static str,
-    anchors: &'static [(f64, f64)],
+    anchors: &'static [Place],
 }
 
 const fn names(
     abbreviation: &'static str,
     name: &'static str,
     genitive: &'static str,
-    anchors: &'static [(f64, f64)],
+    anchors: &'static [Place],
 ) -> Names {
     Names {
         abbreviation,
@@ -210,7 +213,11 @@ pub fn clearance(icrs: Vec3) -> Angle {
         let width = edge.to_ra - edge.from_ra;
         // From the edge's western end, 0 to 360: beyond the width the way round to either end.
         let past = (ra - edge.from_ra).rem_euclid(360.0);
-        let off = if past <= width { 0.0 } else { (past - width).min(360.0 - past) };
+        let off = if past <= width {
+            0.0
+        } else {
+            (past - width).min(360.0 - past)
+        };
         // The distance to an hour circle; behind the pole an edge is at least as far as the pole.
         let along = Angle::from_degrees(off.min(90.0)).sin() * cos_dec;
         let along = Angle::from_radians(libm::asin(along.clamp(0.0, 1.0))).degrees();
@@ -220,7 +227,7 @@ pub fn clearance(icrs: Vec3) -> Angle {
 }
 
 /// Points along a chain of corners (hours, degrees, B1875.0), corners included.
-fn points_along(corners: &[(f64, f64)]) -> Vec<Vec3> {
+fn points_along(corners: &[Place]) -> Vec<Vec3> {
     let mut points = Vec::new();
     for pair in corners.windows(2) {
         let &[(hours, degrees), (next_hours, next_degrees)] = pair else {

@@ -23,6 +23,7 @@ mod vector;
 pub use angle::Angle;
 pub use body::{Body, UnknownBody};
 pub use caution::{Caution, Cautions, Flagged};
+pub use ephemeris::{Ephemeris, EphemerisError, State, Target};
 pub use site::Site;
 pub use skyline::Skyline;
 pub use time::{Tdb, Tt, Ut1, Utc};

@@ -47,7 +47,9 @@ pub enum SkyError {
         "JD {jd:.1} TT lies outside the years -2000 to 3000 for which places can be computed; choose a date within them"
     )]
     OutsideAllSpans { jd: f64 },
-    #[error("JD {jd:.1} TT lies outside the span of the tables in use ({source_name}); ask for a sky that covers it")]
+    #[error(
+        "JD {jd:.1} TT lies outside the span of the tables in use ({source_name}); ask for a sky that covers it"
+    )]
     OutsideSource { jd: f64, source_name: &'static str },
     #[error(transparent)]
     Ephemeris(#[from] EphemerisError),
@@ -82,13 +84,24 @@ impl Sky {
         };
         let ephemeris = Ephemeris::embedded()?;
         if inside(ephemeris.span(), SPAN_MARGIN_DAYS) {
-            return Ok(Sky { source: Source::De440(ephemeris), tables });
+            return Ok(Sky {
+                source: Source::De440(ephemeris),
+                tables,
+            });
         }
         let series = RemoteEphemeris::new();
         if inside(series.span(), 0.0) {
-            return Ok(Sky { source: Source::Series(Arc::new(series)), tables });
+            return Ok(Sky {
+                source: Source::Series(Arc::new(series)),
+                tables,
+            });
         }
-        let jd = if inside((series.span().0, Tdb::from_days(f64::MAX)), 0.0) { to } else { from }.julian_date();
+        let jd = if inside((series.span().0, Tdb::from_days(f64::MAX)), 0.0) {
+            to
+        } else {
+            from
+        }
+        .julian_date();
         Err(SkyError::OutsideAllSpans { jd })
     }
 
@@ -97,7 +110,10 @@ impl Sky {
     /// # Errors
     /// A damaged embedded table.
     pub fn de440() -> Result<Sky, SkyError> {
-        Ok(Sky { source: Source::De440(Ephemeris::embedded()?), tables: TimeTables::embedded() })
+        Ok(Sky {
+            source: Source::De440(Ephemeris::embedded()?),
+            tables: TimeTables::embedded(),
+        })
     }
 
     /// The tables that join the time scales.
@@ -146,7 +162,10 @@ impl Sky {
             Source::De440(_) => "DE440, 1550 to 2650",
             Source::Series(_) => "analytic series, -2000 to 3000",
         };
-        SkyError::OutsideSource { jd: instant.julian_date(), source_name }
+        SkyError::OutsideSource {
+            jd: instant.julian_date(),
+            source_name,
+        }
     }
 
     /// Barycentric state on ICRS axes (the Moon's from the Earth's centre).
@@ -175,7 +194,11 @@ impl Sky {
     /// An instant outside the source.
     pub fn frame_of_date(&self, instant: Tt) -> Result<ReferenceFrame, SkyError> {
         let nutation = self.nutation(Tdb::from_tt(instant))?;
-        Ok(ReferenceFrame::of_date(instant, nutation, self.precession()))
+        Ok(ReferenceFrame::of_date(
+            instant,
+            nutation,
+            self.precession(),
+        ))
     }
 
     /// The view from the Earth's centre.
@@ -193,10 +216,18 @@ impl Sky {
             position: barycentre.position + moon.position * moon_share,
             velocity: barycentre.velocity + moon.velocity * moon_share,
         };
-        // The Moon draws the Earth with a 170th of the Sun's pull: it counts in the rate of aberration.
-        let moon_pull = attraction(moon.position, GM_SUN / SUN_EARTH_RATIO / EARTH_MOON_RATIO);
-        let acceleration = attraction(sun.position - earth.position, GM_SUN) + moon_pull;
-        Ok(Vantage { sky: self, instant, tdb, frame, sun, moon, observer: earth, acceleration, horizon: None })
+        Ok(Vantage {
+            sky: self,
+            instant,
+            tdb,
+            frame,
+            sun,
+            moon,
+            earth,
+            observer: earth,
+            spin_acceleration: Vec3::ZERO,
+            horizon: None,
+        })
     }
 
     /// The view from a site, UT1 from the tables.
@@ -211,15 +242,23 @@ impl Sky {
     ///
     /// # Errors
     /// An instant outside the source.
-    pub fn observer_at_ut1(&self, site: &Site, instant: Tt, ut1: Ut1) -> Result<Vantage<'_>, SkyError> {
+    pub fn observer_at_ut1(
+        &self,
+        site: &Site,
+        instant: Tt,
+        ut1: Ut1,
+    ) -> Result<Vantage<'_>, SkyError> {
         let mut vantage = self.geocentre(instant)?;
-        let sidereal =
-            (frames::apparent_sidereal_time(ut1, instant, &vantage.frame) + site.longitude).wrapped();
+        let sidereal = (frames::apparent_sidereal_time(ut1, instant, &vantage.frame)
+            + site.longitude)
+            .wrapped();
         let (sin_theta, cos_theta) = sidereal.sin_cos();
         let (sin_phi, cos_phi) = site.latitude.sin_cos();
         let up = Vec3::new(cos_phi * cos_theta, cos_phi * sin_theta, sin_phi);
         let east = Vec3::new(-sin_theta, cos_theta, 0.0);
-        let local_from_true = Mat3 { rows: [east, up.cross(east), up] };
+        let local_from_true = Mat3 {
+            rows: [east, up.cross(east), up],
+        };
 
         let (axial_au, polar_au) = site.geocentric_au();
         let position = Vec3::new(axial_au * cos_theta, axial_au * sin_theta, polar_au);
@@ -228,9 +267,11 @@ impl Sky {
         let icrs_from_true = vantage.frame.equatorial_from_icrs.transposed();
         vantage.observer.position += icrs_from_true * position;
         vantage.observer.velocity += icrs_from_true * velocity;
-        vantage.acceleration += icrs_from_true * spin.cross(velocity);
-        vantage.horizon =
-            Some(Horizon { local_from_icrs: local_from_true * vantage.frame.equatorial_from_icrs, sidereal });
+        vantage.spin_acceleration = icrs_from_true * spin.cross(velocity);
+        vantage.horizon = Some(Horizon {
+            local_from_icrs: local_from_true * vantage.frame.equatorial_from_icrs,
+            sidereal,
+        });
         Ok(vantage)
     }
 }
@@ -258,8 +299,12 @@ pub struct Vantage<'s> {
     frame: ReferenceFrame,
     sun: State,
     moon: State,
+    /// The Earth's centre.
+    earth: State,
+    /// The observer: the same, or a site on the turning Earth.
     observer: State,
-    acceleration: Vec3,
+    /// Of a site towards the Earth's axis.
+    spin_acceleration: Vec3,
     horizon: Option<Horizon>,
 }
 
@@ -283,17 +328,18 @@ impl Vantage<'_> {
         let (state, acceleration) = match body {
             Body::Sun => (self.sun, Vec3::ZERO),
             Body::Moon => {
-                let barycentre = self.sky.state(Target::EarthMoonBarycentre, self.tdb)?;
-                let share = EARTH_MOON_RATIO / (1.0 + EARTH_MOON_RATIO);
-                let state = State {
-                    position: barycentre.position + self.moon.position * share,
-                    velocity: barycentre.velocity + self.moon.velocity * share,
-                };
-                (state, attraction(self.sun.position - state.position, GM_SUN))
+                let state = self.earth + self.moon;
+                (
+                    state,
+                    attraction(self.sun.position - state.position, GM_SUN),
+                )
             }
             planet => {
                 let state = self.sky.state(target_of(planet), self.tdb)?;
-                (state, attraction(self.sun.position - state.position, GM_SUN))
+                (
+                    state,
+                    attraction(self.sun.position - state.position, GM_SUN),
+                )
             }
         };
         let geometric = state.position - self.observer.position;
@@ -301,11 +347,11 @@ impl Vantage<'_> {
 
         let seen_after =
             |days: f64| geometric - state.velocity * days + acceleration * (0.5 * days * days);
-        let mut light_time = geometric.norm() / LIGHT_AU_PER_DAY;
-        // Each round leaves 1e-4 of the error before it (speed over the speed of light).
-        for _ in 0..3 {
-            light_time = seen_after(light_time).norm() / LIGHT_AU_PER_DAY;
-        }
+        // The body's own motion along the line of sight brings the first guess to 1e-8 of the light time; a round of
+        // iteration leaves 1e-4 (speed over the speed of light) of that.
+        let length = geometric.norm();
+        let guess = length / (LIGHT_AU_PER_DAY + geometric.dot(state.velocity) / length);
+        let light_time = seen_after(guess).norm() / LIGHT_AU_PER_DAY;
         let astrometric = seen_after(light_time);
         let distance = light_time * LIGHT_AU_PER_DAY;
         let direction = astrometric * (1.0 / distance);
@@ -317,10 +363,14 @@ impl Vantage<'_> {
         let heliocentric = astrometric + self.observer.position - sun_then;
         let deflected = match body {
             Body::Sun => direction,
-            _ => deflect(direction, heliocentric, self.observer.position - self.sun.position),
+            _ => deflect(
+                direction,
+                heliocentric,
+                self.observer.position - self.sun.position,
+            ),
         };
         let apparent = self.aberrate(deflected);
-        let mut place = Place {
+        Ok(Place {
             body,
             instant: self.instant,
             emission: self.tdb.plus_days(-light_time),
@@ -334,19 +384,25 @@ impl Vantage<'_> {
             heliocentric_now: state.position - self.sun.position,
             heliocentric_velocity_now: state.velocity - self.sun.velocity,
             apparent,
-            apparent_rate: Vec3::ZERO,
+            observer: ObserverMotion {
+                velocity: self.observer.velocity,
+                to_sun: self.sun.position - self.earth.position,
+                to_moon: self.moon.position,
+                spin_acceleration: self.spin_acceleration,
+            },
             frame: self.frame,
             cautions: self.sky.cautions(),
-        };
-        place.apparent_rate = self.aberration_rate(direction, place.direction_rate());
-        Ok(place)
+        })
     }
 
     /// The apparent direction, on ICRS axes, of something infinitely far in the (astrometric) direction given.
     #[must_use]
     pub fn apparent_of_star(&self, direction: Vec3) -> Vec3 {
-        let deflected =
-            deflect(direction, direction * 1e9, self.observer.position - self.sun.position);
+        let deflected = deflect(
+            direction,
+            direction * 1e9,
+            self.observer.position - self.sun.position,
+        );
         self.aberrate(deflected)
     }
 
@@ -355,15 +411,6 @@ impl Vantage<'_> {
         let gamma_inverse = (1.0 - beta.dot(beta)).sqrt();
         let along = direction.dot(beta);
         (direction * gamma_inverse + beta * (1.0 + along / (1.0 + gamma_inverse))).unit()
-    }
-
-    /// Rate of the aberrated direction; first order in v/c, which leaves out 0.00004" a day.
-    fn aberration_rate(&self, u: Vec3, u_rate: Vec3) -> Vec3 {
-        let beta = self.observer.velocity * (1.0 / LIGHT_AU_PER_DAY);
-        let beta_rate = self.acceleration * (1.0 / LIGHT_AU_PER_DAY);
-        let along = u.dot(beta);
-        let along_rate = u_rate.dot(beta) + u.dot(beta_rate);
-        u_rate + beta_rate - u_rate * along - u * along_rate
     }
 
     /// Altitude (no refraction) and azimuth of an apparent direction on ICRS axes; `None` at the geocentre.
@@ -466,7 +513,10 @@ pub struct Spherical {
 impl Spherical {
     #[must_use]
     pub fn of(direction: Vec3) -> Self {
-        Spherical { longitude: direction.longitude(), latitude: direction.latitude() }
+        Spherical {
+            longitude: direction.longitude(),
+            latitude: direction.latitude(),
+        }
     }
 }
 
@@ -482,14 +532,21 @@ pub struct SphericalRate {
 impl SphericalRate {
     fn of(v: Vec3, rate: Vec3) -> Self {
         let across = v.x * v.x + v.y * v.y;
-        let longitude = if across > 0.0 { (v.x * rate.y - v.y * rate.x) / across } else { 0.0 };
+        let longitude = if across > 0.0 {
+            (v.x * rate.y - v.y * rate.x) / across
+        } else {
+            0.0
+        };
         let norm = v.norm();
         let latitude = if across > 0.0 {
             (rate.z - v.z * v.dot(rate) / (norm * norm)) / across.sqrt()
         } else {
             0.0
         };
-        SphericalRate { longitude: Angle::from_radians(longitude), latitude: Angle::from_radians(latitude) }
+        SphericalRate {
+            longitude: Angle::from_radians(longitude),
+            latitude: Angle::from_radians(latitude),
+        }
     }
 }
 
@@ -500,6 +557,24 @@ pub struct Horizontal {
     pub azimuth: Angle,
     /// Unrefracted unless the owner says otherwise.
     pub altitude: Angle,
+}
+
+/// What the rate of aberration depends on; worked out only when a rate is asked for.
+#[derive(Clone, Copy, Debug)]
+struct ObserverMotion {
+    velocity: Vec3,
+    /// From the Earth's centre.
+    to_sun: Vec3,
+    to_moon: Vec3,
+    spin_acceleration: Vec3,
+}
+
+impl ObserverMotion {
+    /// au/day^2. The Moon draws the Earth with a 170th of the Sun's pull, which counts at a greatest elongation.
+    fn acceleration(&self) -> Vec3 {
+        let gm_moon = GM_SUN / SUN_EARTH_RATIO / EARTH_MOON_RATIO;
+        attraction(self.to_sun, GM_SUN) + attraction(self.to_moon, gm_moon) + self.spin_acceleration
+    }
 }
 
 /// A body as an observer sees it at an instant.
@@ -529,8 +604,7 @@ pub struct Place {
     pub heliocentric_velocity_now: Vec3,
     /// Apparent direction: light time, deflection, aberration; unit vector on ICRS axes.
     pub apparent: Vec3,
-    /// Rate of `apparent` (without that of the deflection, below 0.002" a day beyond 10 degrees from the Sun).
-    pub apparent_rate: Vec3,
+    observer: ObserverMotion,
     /// The axes of date.
     pub frame: ReferenceFrame,
     pub cautions: Cautions,
@@ -564,8 +638,21 @@ impl Place {
     /// Rate of [`Place::direction`], radians a day.
     #[must_use]
     pub fn direction_rate(&self) -> Vec3 {
-        let across = self.astrometric_rate - self.direction * self.direction.dot(self.astrometric_rate);
+        let across =
+            self.astrometric_rate - self.direction * self.direction.dot(self.astrometric_rate);
         across * (1.0 / self.distance_au)
+    }
+
+    /// Rate of `apparent`, radians a day: without that of the deflection (below 0.002" a day beyond 10 degrees from the
+    /// Sun) and of second order in v/c (0.00004" a day).
+    #[must_use]
+    pub fn apparent_rate(&self) -> Vec3 {
+        let beta = self.observer.velocity * (1.0 / LIGHT_AU_PER_DAY);
+        let beta_rate = self.observer.acceleration() * (1.0 / LIGHT_AU_PER_DAY);
+        let (u, u_rate) = (self.direction, self.direction_rate());
+        let along = u.dot(beta);
+        let along_rate = u_rate.dot(beta) + u.dot(beta_rate);
+        u_rate + beta_rate - u_rate * along - u * along_rate
     }
 
     /// Rate of [`Place::distance_au`], au a day.
@@ -577,14 +664,18 @@ impl Place {
     /// Rates of [`Place::equatorial_of_date`], the turning of the axes included.
     #[must_use]
     pub fn equatorial_rate(&self) -> SphericalRate {
-        let rate = self.frame.equatorial_rate(self.apparent, self.apparent_rate);
+        let rate = self
+            .frame
+            .equatorial_rate(self.apparent, self.apparent_rate());
         SphericalRate::of(self.frame.equatorial_from_icrs * self.apparent, rate)
     }
 
     /// Rates of [`Place::ecliptic_of_date`], the turning of the axes included.
     #[must_use]
     pub fn ecliptic_rate(&self) -> SphericalRate {
-        let rate = self.frame.ecliptic_rate(self.apparent, self.apparent_rate);
+        let rate = self
+            .frame
+            .ecliptic_rate(self.apparent, self.apparent_rate());
         SphericalRate::of(self.frame.ecliptic_from_icrs * self.apparent, rate)
     }
 
@@ -624,7 +715,8 @@ impl Place {
         if sine == 0.0 {
             return Angle::ZERO;
         }
-        let cosine_rate = self.apparent_rate.dot(other.apparent) + self.apparent.dot(other.apparent_rate);
+        let cosine_rate =
+            self.apparent_rate().dot(other.apparent) + self.apparent.dot(other.apparent_rate());
         Angle::from_radians(-cosine_rate / sine)
     }
 
@@ -632,6 +724,10 @@ impl Place {
     #[must_use]
     pub fn side_of(&self, sun: &Place) -> Side {
         let difference = self.ecliptic_of_date().longitude - sun.ecliptic_of_date().longitude;
-        if difference.signed() >= Angle::ZERO { Side::East } else { Side::West }
+        if difference.signed() >= Angle::ZERO {
+            Side::East
+        } else {
+            Side::West
+        }
     }
 }

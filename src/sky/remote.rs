@@ -17,9 +17,9 @@
 //! place costs about 0.2 microseconds. The fit adds at most 0.01" to the error of the series, which
 //! [`RemoteEphemeris::accuracy`] states.
 
-use std::f64::consts::PI;
 use std::sync::OnceLock;
 
+use super::chebyshev;
 use super::ephemeris::{State, Target};
 use super::frames::Nutation;
 use super::time::J2000_JD;
@@ -44,6 +44,9 @@ const MOON_CORRECTION_ARCSEC: [f64; 5] =
     [0.093_195, -0.315_36, -0.059_947, -1.973_6e-4, -8.990_6e-6];
 /// The Moon's mean motion in arcseconds a day.
 const MOON_ARCSEC_A_DAY: f64 = 1_732_559_343.0 / 36_525.0;
+
+/// The Moon's mass over that of Earth and Moon (DE440), so the way from the Earth's centre to the barycentre of the two.
+const MOON_SHARE: f64 = 1.0 / (1.0 + 81.300_568_22);
 
 /// What pieces are fitted to.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -141,7 +144,7 @@ impl Series {
 }
 
 /// One piece: coefficients of Chebyshev polynomials, none before it is first asked for.
-type Slot = OnceLock<Box<[Vec3]>>;
+type Slot = OnceLock<Vec<[f64; 3]>>;
 
 /// The analytic series with the pieces fitted so far; shared freely between threads.
 #[derive(Debug, Default)]
@@ -181,10 +184,30 @@ impl RemoteEphemeris {
         }
     }
 
-    /// Nutation in longitude and in obliquity; `None` outside the span.
+    /// Position and velocity of the Earth's centre from the barycentre; `None` outside the span.
+    #[must_use]
+    pub fn earth(&self, tdb: Tdb) -> Option<State> {
+        let barycentre = self.state(Target::EarthMoonBarycentre, tdb)?;
+        let moon = self.state(Target::MoonFromEarth, tdb)?;
+        Some(State {
+            position: barycentre.position - moon.position * MOON_SHARE,
+            velocity: barycentre.velocity - moon.velocity * MOON_SHARE,
+        })
+    }
+
+    /// Position and velocity of the Moon's centre from the barycentre; `None` outside the span.
+    #[must_use]
+    pub fn moon(&self, tdb: Tdb) -> Option<State> {
+        Some(self.earth(tdb)? + self.state(Target::MoonFromEarth, tdb)?)
+    }
+
+    /// Nutation of date, IAU 1980; `None` outside the span.
     #[must_use]
     pub fn nutation(&self, tdb: Tdb) -> Option<Nutation> {
-        let State { position: value, velocity: rate } = self.evaluate(Series::Nutation, tdb)?;
+        let State {
+            position: value,
+            velocity: rate,
+        } = self.evaluate(Series::Nutation, tdb)?;
         Some(Nutation {
             longitude: Angle::from_radians(value.x),
             obliquity: Angle::from_radians(value.y),
@@ -223,10 +246,7 @@ impl RemoteEphemeris {
     fn barycentric(&self, planet: Planet, tdb: Tdb) -> Option<State> {
         let from_sun = self.evaluate(Series::Planet(planet), tdb)?;
         let sun = self.evaluate(Series::Sun, tdb)?;
-        Some(State {
-            position: from_sun.position + sun.position,
-            velocity: from_sun.velocity + sun.velocity,
-        })
+        Some(from_sun + sun)
     }
 
     /// Value and rate per day from the piece, which is fitted if this is its first use.
@@ -244,19 +264,25 @@ impl RemoteEphemeris {
         });
         let slot = slots.get(number as usize)?;
         let coefficients = slot.get_or_init(|| self.fit(series, FROM_DAYS + number * piece_days));
-        let (position, slope) = clenshaw(coefficients, 2.0 * (position - number) - 1.0);
+        let (value, slope) = chebyshev::evaluate(coefficients, 2.0 * (position - number) - 1.0);
         Some(State {
-            position,
-            velocity: slope * (2.0 / piece_days),
+            position: vector(value),
+            velocity: vector(slope) * (2.0 / piece_days),
         })
     }
 
-    fn fit(&self, series: Series, first_day: f64) -> Box<[Vec3]> {
+    /// Fitted at the ends of the piece too, so that neighbours meet without a step, whatever short waves of the series they
+    /// leave out between.
+    fn fit(&self, series: Series, first_day: f64) -> Vec<[f64; 3]> {
         let (piece_days, count) = series.piece();
         let middle = first_day + piece_days / 2.0;
-        fitted(count, |x| {
-            self.sample(series, middle + x * piece_days / 2.0)
-        })
+        let samples: Vec<[f64; 3]> = chebyshev::nodes(count - 1)
+            .map(|x| {
+                let Vec3 { x, y, z } = self.sample(series, middle + x * piece_days / 2.0);
+                [x, y, z]
+            })
+            .collect();
+        chebyshev::fit(&samples)
     }
 
     /// The value from the series itself.
@@ -288,6 +314,10 @@ impl RemoteEphemeris {
     }
 }
 
+fn vector([x, y, z]: [f64; 3]) -> Vec3 {
+    Vec3::new(x, y, z)
+}
+
 /// The Moon from the Earth's centre, au.
 fn moon(days: f64) -> Vec3 {
     let centuries = Tdb::from_days(days).centuries();
@@ -297,52 +327,7 @@ fn moon(days: f64) -> Vec3 {
         .fold(0.0, |sum, term| sum * centuries + term);
     // A shift in time moves all the arguments together, as an error in the Moon's mean longitude does in fact.
     let [position, _] = sofars::eph::moon98(J2000_JD, days + correction / MOON_ARCSEC_A_DAY);
-    Vec3::new(position[0], position[1], position[2])
-}
-
-/// The `count` coefficients of the Chebyshev series through `value` at the extrema of its last polynomial, -1 and 1 among
-/// them: so neighbouring pieces meet without a step, whatever short waves of the series they leave out between.
-fn fitted(count: usize, value: impl Fn(f64) -> Vec3) -> Box<[Vec3]> {
-    let last = count.saturating_sub(1).max(1);
-    let angle = |node: usize| PI * node as f64 / last as f64;
-    let halved_at_ends = |index: usize| {
-        if index == 0 || index == last {
-            0.5
-        } else {
-            1.0
-        }
-    };
-    let samples: Vec<Vec3> = (0..=last)
-        .map(|node| value(libm::cos(angle(node))) * halved_at_ends(node))
-        .collect();
-    let coefficient = |degree: usize| {
-        let mut sum = Vec3::ZERO;
-        for (node, sample) in samples.iter().enumerate() {
-            // The angle is reduced by whole turns in integers, which keeps the last digits.
-            sum += *sample * libm::cos(angle(degree * node % (2 * last)));
-        }
-        sum * (2.0 / last as f64 * halved_at_ends(degree))
-    };
-    (0..=last).map(coefficient).collect()
-}
-
-/// Value and slope at x from -1 to 1, by Clenshaw's recurrence and its derivative.
-fn clenshaw(coefficients: &[Vec3], x: f64) -> (Vec3, Vec3) {
-    let Some((first, rest)) = coefficients.split_first() else {
-        return (Vec3::ZERO, Vec3::ZERO);
-    };
-    let (mut value, mut value_before) = (Vec3::ZERO, Vec3::ZERO);
-    let (mut slope, mut slope_before) = (Vec3::ZERO, Vec3::ZERO);
-    for coefficient in rest.iter().rev() {
-        let next_slope = slope * (2.0 * x) - slope_before + value * 2.0;
-        let next_value = value * (2.0 * x) - value_before + *coefficient;
-        (slope_before, slope) = (slope, next_slope);
-        (value_before, value) = (value, next_value);
-    }
-    (
-        *first + value * x - value_before,
-        value + slope * x - slope_before,
-    )
+    vector(position)
 }
 
 #[cfg(test)]
@@ -387,28 +372,6 @@ mod tests {
             }
             let arcsec = Angle::from_radians(worst / least_distance(series)).arcsec();
             assert!(arcsec < 0.01, "{series:?}: {arcsec}\"");
-        }
-    }
-
-    /// T0 to T3 of x and their slopes, from their definition (Abramowitz and Stegun 22.4, from memory).
-    #[test]
-    fn chebyshev_polynomials_are_what_they_are_called() {
-        let x = 0.3;
-        let unit = |degree: usize| {
-            let mut coefficients = [Vec3::ZERO; 4];
-            coefficients[degree] = Vec3::new(1.0, -1.0, 0.0);
-            clenshaw(&coefficients, x)
-        };
-        let expected = [
-            (1.0, 0.0),
-            (x, 1.0),
-            (2.0 * x * x - 1.0, 4.0 * x),
-            (4.0 * x * x * x - 3.0 * x, 12.0 * x * x - 3.0),
-        ];
-        for (degree, (value, slope)) in expected.into_iter().enumerate() {
-            let (ours, our_slope) = unit(degree);
-            assert!((ours.x - value).abs() < 1e-15 && (ours.y + value).abs() < 1e-15);
-            assert!((our_slope.x - slope).abs() < 1e-14);
         }
     }
 }

@@ -16,7 +16,8 @@ use thiserror::Error;
 use super::{Angle, Tt, Vec3};
 
 /// Origin of the stars, for `--version`.
-pub const SOURCE: &str = "Hipparcos, the new reduction (van Leeuwen 2007, CDS I/311); names approved by the IAU";
+pub const SOURCE: &str =
+    "Hipparcos, the new reduction (van Leeuwen 2007, CDS I/311); names approved by the IAU";
 
 /// The epoch of the catalogue, J1991.25.
 pub const CATALOGUE_EPOCH: Tt = Tt::from_julian_date(2_448_349.062_5);
