@@ -8,7 +8,10 @@ fn lens(focal_length_mm: f64) -> Lens {
 
 #[track_caller]
 fn close(got: f64, expected: f64, tolerance: f64) {
-    assert!((got - expected).abs() <= tolerance, "{got} against {expected}");
+    assert!(
+        (got - expected).abs() <= tolerance,
+        "{got} against {expected}"
+    );
 }
 
 /// 2 atan(s / 2f) worked out with Python's `math`, printed to 0.001 degrees.
@@ -42,9 +45,17 @@ fn sides_and_pitch_describe_the_same_sensor() {
     let by_pitch = Sensor::from_pitch(6000, 4000, 6.0).unwrap();
     close(by_pitch.width_mm(), 36.0, 1e-12);
     close(by_pitch.height_mm(), 24.0, 1e-12);
-    close(Sensor::new(36.0, 24.0, 6000, 4000).unwrap().pitch_um(), 6.0, 1e-12);
+    close(
+        Sensor::new(36.0, 24.0, 6000, 4000).unwrap().pitch_um(),
+        6.0,
+        1e-12,
+    );
     // A data sheet that rounds its sides to 0.1 mm leaves 3.917 and 3.9 um.
-    close(Sensor::new(23.5, 15.6, 6000, 4000).unwrap().pitch_um(), 3.908, 0.001);
+    close(
+        Sensor::new(23.5, 15.6, 6000, 4000).unwrap().pitch_um(),
+        3.908,
+        0.001,
+    );
     close(lens(280.0).aperture_mm(), 70.0, 1e-12);
 }
 
@@ -52,7 +63,10 @@ fn sides_and_pitch_describe_the_same_sensor() {
 fn lenses_that_cannot_be_are_refused_with_what_would_work() {
     let message = |focal, ratio| Lens::new("x", focal, ratio).unwrap_err().to_string();
     let zero = message(0.0, 2.8);
-    assert!(zero.contains("focal length 0 is out of range") && zero.contains("1 to 100000 mm"), "{zero}");
+    assert!(
+        zero.contains("focal length 0 is out of range") && zero.contains("1 to 100000 mm"),
+        "{zero}"
+    );
     for focal in [-50.0, f64::NAN, f64::INFINITY, 1e9] {
         assert!(message(focal, 2.8).contains("focal length"));
     }
@@ -70,9 +84,17 @@ fn sensors_that_cannot_be_are_refused_with_what_would_work() {
     assert!(message(36.0, 24.0, 6000, u32::MAX).contains("sensor rows"));
     let swapped = Sensor::new(36.0, 24.0, 4000, 6000).unwrap_err();
     assert!(matches!(swapped, CameraError::PixelsNotSquare { .. }));
-    assert!(swapped.to_string().contains("9.000 x 4.000 um"), "{swapped}");
+    assert!(
+        swapped.to_string().contains("9.000 x 4.000 um"),
+        "{swapped}"
+    );
     for pitch in [0.0, -3.0, f64::NAN] {
-        assert!(Sensor::from_pitch(6000, 4000, pitch).unwrap_err().to_string().contains("pixel pitch"));
+        assert!(
+            Sensor::from_pitch(6000, 4000, pitch)
+                .unwrap_err()
+                .to_string()
+                .contains("pixel pitch")
+        );
     }
 }
 
@@ -82,7 +104,13 @@ fn written_lenses_and_sensors_read_back_equal_and_are_checked() {
     let text = ron::to_string(&lens).unwrap();
     assert_eq!(ron::from_str::<Lens>(&text).unwrap(), lens);
     let sensor = Sensor::new(36.0, 24.0, 6000, 4000).unwrap();
-    assert_eq!(ron::from_str::<Sensor>(&ron::to_string(&sensor).unwrap()).unwrap(), sensor);
+    assert_eq!(
+        ron::from_str::<Sensor>(&ron::to_string(&sensor).unwrap()).unwrap(),
+        sensor
+    );
     let bad = ron::from_str::<Lens>("(name:\"x\",focal_length_mm:0,f_ratio:2)").unwrap_err();
-    assert!(bad.to_string().contains("focal length 0 is out of range"), "{bad}");
+    assert!(
+        bad.to_string().contains("focal length 0 is out of range"),
+        "{bad}"
+    );
 }

@@ -40,7 +40,9 @@ impl AngularRate {
         let distance_au = within("distance", distance_au, (0.001, 100.0), "au from the Earth")?;
         Ok(rotation_period_h(body).map(|hours| {
             let radius = body.radius_km() / (distance_au * AU_KM);
-            AngularRate { per_second: Angle::from_radians(std::f64::consts::TAU * radius / (hours * 3600.0)) }
+            AngularRate {
+                per_second: Angle::from_radians(std::f64::consts::TAU * radius / (hours * 3600.0)),
+            }
         }))
     }
 
@@ -49,8 +51,15 @@ impl AngularRate {
     /// # Errors
     /// Less than a second or more than ten days between them.
     pub fn of_motion(first: Vec3, second: Vec3, days: f64) -> Result<Self, OutOfRange> {
-        let days = within("time between the directions", days, (1.0 / SECONDS_PER_DAY, 10.0), "days (an hour or a day will do)")?;
-        Ok(AngularRate { per_second: first.separation(second) / (days * SECONDS_PER_DAY) })
+        let days = within(
+            "time between the directions",
+            days,
+            (1.0 / SECONDS_PER_DAY, 10.0),
+            "days (an hour or a day will do)",
+        )?;
+        Ok(AngularRate {
+            per_second: first.separation(second) / (days * SECONDS_PER_DAY),
+        })
     }
 
     /// Seconds in which it moves over an angle; `None` when it stands still.
@@ -65,8 +74,18 @@ impl AngularRate {
     ///
     /// # Errors
     /// Pixels outside 0.01 to 1000.
-    pub fn longest_exposure_s(&self, allowed: f64, lens: &Lens, sensor: &Sensor) -> Result<Option<f64>, OutOfRange> {
-        let allowed = within("allowed trail", allowed, (0.01, 1000.0), "pixels (1 to 3 look like points)")?;
+    pub fn longest_exposure_s(
+        &self,
+        allowed: f64,
+        lens: &Lens,
+        sensor: &Sensor,
+    ) -> Result<Option<f64>, OutOfRange> {
+        let allowed = within(
+            "allowed trail",
+            allowed,
+            (0.01, 1000.0),
+            "pixels (1 to 3 look like points)",
+        )?;
         Ok(self.seconds_for(lens.pixel_scale(sensor) * allowed))
     }
 
@@ -104,9 +123,7 @@ pub enum ThumbRule {
     NpfSimple,
     /// k (16.856 N + 0.0997 f + 13.713 p) / (f cos declination), k from 1 (strict) to 3. Credited to F. Michaud, Le Havre (from
     /// memory).
-    NpfFull {
-        leniency: f64,
-    },
+    NpfFull { leniency: f64 },
 }
 
 /// What a rule of the trade says, and what comes of it.
@@ -133,24 +150,39 @@ impl ThumbRule {
     ///
     /// # Errors
     /// A leniency outside 1 to 3; for the full rule, a declination beyond 89.9 degrees, where it has no bound.
-    pub fn exposure(self, declination: Angle, lens: &Lens, sensor: &Sensor) -> Result<ThumbExposure, OutOfRange> {
+    pub fn exposure(
+        self,
+        declination: Angle,
+        lens: &Lens,
+        sensor: &Sensor,
+    ) -> Result<ThumbExposure, OutOfRange> {
         let (focal, f_ratio, pitch) = (lens.focal_length_mm(), lens.f_ratio(), sensor.pitch_um());
         let seconds = match self {
             ThumbRule::FiveHundred => 500.0 / focal,
             ThumbRule::NpfSimple => (35.0 * f_ratio + 30.0 * pitch) / focal,
             ThumbRule::NpfFull { leniency } => {
-                let leniency = within("leniency of the NPF rule", leniency, (1.0, 3.0), "(1 is strict)")?;
+                let leniency = within(
+                    "leniency of the NPF rule",
+                    leniency,
+                    (1.0, 3.0),
+                    "(1 is strict)",
+                )?;
                 within(
                     "declination",
                     declination.degrees(),
                     (-89.9, 89.9),
                     "degrees (take the one in the picture that is nearest to the equator)",
                 )?;
-                leniency * (16.856 * f_ratio + 0.0997 * focal + 13.713 * pitch) / (focal * declination.cos())
+                leniency * (16.856 * f_ratio + 0.0997 * focal + 13.713 * pitch)
+                    / (focal * declination.cos())
             }
         };
         let trail_pixels = AngularRate::of_the_sky(declination).pixels_in(seconds, lens, sensor);
-        Ok(ThumbExposure { rule: self, seconds, trail_pixels })
+        Ok(ThumbExposure {
+            rule: self,
+            seconds,
+            trail_pixels,
+        })
     }
 }
 
@@ -158,7 +190,13 @@ impl ThumbRule {
 const WAVELENGTHS_NM: (f64, f64) = (300.0, 1100.0);
 
 fn metres_of_light(wavelength_nm: f64) -> Result<f64, OutOfRange> {
-    Ok(1e-9 * within("wavelength", wavelength_nm, WAVELENGTHS_NM, "nanometres (green light has 550)")?)
+    Ok(1e-9
+        * within(
+            "wavelength",
+            wavelength_nm,
+            WAVELENGTHS_NM,
+            "nanometres (green light has 550)",
+        )?)
 }
 
 /// What diffraction leaves of detail behind a round aperture.
@@ -212,9 +250,24 @@ impl DispersingAir {
         /// One millimetre of mercury in hPa (conventional: 13.5951 times standard gravity).
         const HPA_PER_MM_HG: f64 = 1.333_223_874;
         Ok(DispersingAir {
-            pressure_mm_hg: within("pressure", pressure_hpa, (0.0, 1200.0), "hPa at the site itself")? / HPA_PER_MM_HG,
-            temperature_c: within("temperature", temperature_c, (-100.0, 60.0), "degrees Celsius")?,
-            vapour_mm_hg: within("vapour pressure", vapour_hpa, (0.0, 100.0), "hPa (10 is usual)")? / HPA_PER_MM_HG,
+            pressure_mm_hg: within(
+                "pressure",
+                pressure_hpa,
+                (0.0, 1200.0),
+                "hPa at the site itself",
+            )? / HPA_PER_MM_HG,
+            temperature_c: within(
+                "temperature",
+                temperature_c,
+                (-100.0, 60.0),
+                "degrees Celsius",
+            )?,
+            vapour_mm_hg: within(
+                "vapour pressure",
+                vapour_hpa,
+                (0.0, 100.0),
+                "hPa (10 is usual)",
+            )? / HPA_PER_MM_HG,
         })
     }
 
@@ -235,7 +288,12 @@ impl DispersingAir {
     ///
     /// # Errors
     /// A wavelength outside 300 to 1100 nm, an altitude outside 5 to 90 degrees.
-    pub fn dispersion(&self, first_nm: f64, second_nm: f64, apparent_altitude: Angle) -> Result<Angle, OutOfRange> {
+    pub fn dispersion(
+        &self,
+        first_nm: f64,
+        second_nm: f64,
+        apparent_altitude: Angle,
+    ) -> Result<Angle, OutOfRange> {
         let altitude_deg = within(
             "altitude",
             apparent_altitude.degrees(),
@@ -243,7 +301,9 @@ impl DispersingAir {
             "degrees (nearer to the horizon the formula does not hold)",
         )?;
         let bend = self.refractivity(first_nm)? - self.refractivity(second_nm)?;
-        Ok(Angle::from_radians(bend * Angle::from_degrees(90.0 - altitude_deg).tan()))
+        Ok(Angle::from_radians(
+            bend * Angle::from_degrees(90.0 - altitude_deg).tan(),
+        ))
     }
 }
 
@@ -253,6 +313,11 @@ impl DispersingAir {
 /// # Errors
 /// An airmass outside 1 to 40.
 pub fn seeing_at(zenith_seeing: Angle, airmass: f64) -> Result<Angle, OutOfRange> {
-    let airmass = within("airmass", airmass, (1.0, 40.0), "(1 at the zenith, 38 at the horizon)")?;
+    let airmass = within(
+        "airmass",
+        airmass,
+        (1.0, 40.0),
+        "(1 at the zenith, 38 at the horizon)",
+    )?;
     Ok(zenith_seeing * libm::pow(airmass, 0.6))
 }

@@ -307,7 +307,8 @@ impl Sensor {
     /// Side of a pixel: the root of its area, where the rounding of a data sheet leaves width and height a little apart.
     #[must_use]
     pub fn pitch_um(&self) -> f64 {
-        let area = (self.width_mm / f64::from(self.columns)) * (self.height_mm / f64::from(self.rows));
+        let area =
+            (self.width_mm / f64::from(self.columns)) * (self.height_mm / f64::from(self.rows));
         1e3 * area.sqrt()
     }
 }

@@ -7,10 +7,15 @@ mod compute;
 mod conditions;
 mod constellation_walk;
 pub mod events;
+pub mod exposure;
+pub mod framing;
 pub mod horizon;
+pub mod lens;
 mod loops;
 pub mod outlook;
 mod search;
+pub mod stacking;
+pub mod tangent;
 mod track;
 mod types;
 

@@ -97,10 +97,25 @@ impl GroundFrame {
     ///
     /// # Errors
     /// An altitude outside -90 to 90 degrees, azimuth or roll that are no numbers.
-    pub fn new(aim: Horizontal, roll: Angle, lens: &Lens, sensor: &Sensor) -> Result<Self, OutOfRange> {
-        within("azimuth", aim.azimuth.degrees(), (-360.0, 360.0), "degrees from north through east")?;
+    pub fn new(
+        aim: Horizontal,
+        roll: Angle,
+        lens: &Lens,
+        sensor: &Sensor,
+    ) -> Result<Self, OutOfRange> {
+        within(
+            "azimuth",
+            aim.azimuth.degrees(),
+            (-360.0, 360.0),
+            "degrees from north through east",
+        )?;
         within("altitude", aim.altitude.degrees(), (-90.0, 90.0), "degrees")?;
-        within("roll", roll.degrees(), (-360.0, 360.0), "degrees, to the left positive")?;
+        within(
+            "roll",
+            roll.degrees(),
+            (-360.0, 360.0),
+            "degrees, to the left positive",
+        )?;
         let plane = TangentPlane::of_ground(aim, roll);
         Ok(GroundFrame {
             aim,
@@ -115,7 +130,11 @@ impl GroundFrame {
     ///
     /// # Errors
     /// No places, or places more than 70 degrees from the middle.
-    pub fn level_around(places: &[Horizontal], lens: &Lens, sensor: &Sensor) -> Result<Self, FrameError> {
+    pub fn level_around(
+        places: &[Horizontal],
+        lens: &Lens,
+        sensor: &Sensor,
+    ) -> Result<Self, FrameError> {
         const GREATEST_REACH_DEG: f64 = 70.0;
         let sum = places
             .iter()
@@ -127,8 +146,9 @@ impl GroundFrame {
         let about = sum.longitude();
         let range = |values: &dyn Fn(&Horizontal) -> f64| {
             let all = places.iter().map(values);
-            let (least, greatest) =
-                all.fold((f64::MAX, f64::MIN), |(least, greatest), value| (least.min(value), greatest.max(value)));
+            let (least, greatest) = all.fold((f64::MAX, f64::MIN), |(least, greatest), value| {
+                (least.min(value), greatest.max(value))
+            });
             Angle::from_radians(0.5 * (least + greatest))
         };
         let aim = Horizontal {
@@ -136,9 +156,15 @@ impl GroundFrame {
             altitude: range(&|place| place.altitude.radians()),
         };
         let middle = ground_vector(aim);
-        let reach = places.iter().map(|place| middle.separation(ground_vector(*place)).degrees()).fold(0.0, f64::max);
+        let reach = places
+            .iter()
+            .map(|place| middle.separation(ground_vector(*place)).degrees())
+            .fold(0.0, f64::max);
         if reach > GREATEST_REACH_DEG {
-            return Err(FrameError::TooWide { reach, greatest: GREATEST_REACH_DEG });
+            return Err(FrameError::TooWide {
+                reach,
+                greatest: GREATEST_REACH_DEG,
+            });
         }
         Ok(GroundFrame::new(aim, Angle::ZERO, lens, sensor)?)
     }
@@ -170,7 +196,12 @@ impl GroundFrame {
     #[must_use]
     pub fn pixel(&self, place: Horizontal) -> Option<Pixel> {
         let point = self.rectangle.plane().project(ground_vector(place))?;
-        Some(Pixel::from_plane(point, &self.rectangle, self.columns, self.rows))
+        Some(Pixel::from_plane(
+            point,
+            &self.rectangle,
+            self.columns,
+            self.rows,
+        ))
     }
 
     /// Azimuth and altitude of a point of the picture.
@@ -178,7 +209,10 @@ impl GroundFrame {
     pub fn place(&self, pixel: Pixel) -> Horizontal {
         let point = pixel.to_plane(&self.rectangle, self.columns, self.rows);
         let vector = self.rectangle.plane().direction(point);
-        Horizontal { azimuth: vector.longitude(), altitude: vector.latitude() }
+        Horizontal {
+            azimuth: vector.longitude(),
+            altitude: vector.latitude(),
+        }
     }
 
     /// Whether a place lies in the picture, edges included.
@@ -212,7 +246,10 @@ pub enum GroundRule {
 /// Sun at -6 degrees, evening.
 impl Default for GroundRule {
     fn default() -> Self {
-        GroundRule::SunAltitude { altitude: Angle::from_degrees(-6.0), half: NightHalf::Evening }
+        GroundRule::SunAltitude {
+            altitude: Angle::from_degrees(-6.0),
+            half: NightHalf::Evening,
+        }
     }
 }
 
@@ -234,24 +271,36 @@ impl GroundRule {
                 (-90.0, HIGHEST_SUN_DEG),
                 "degrees (-6 is the end of civil twilight)",
             ),
-            GroundRule::FromSunset { minutes, half: NightHalf::Evening } => within(
+            GroundRule::FromSunset {
+                minutes,
+                half: NightHalf::Evening,
+            } => within(
                 "time from sunset",
                 minutes,
                 (AFTER_SUNSET_MIN, 720.0),
                 "minutes after sunset (the whole Sun must be gone)",
             ),
-            GroundRule::FromSunset { minutes, half: NightHalf::Morning } => within(
+            GroundRule::FromSunset {
+                minutes,
+                half: NightHalf::Morning,
+            } => within(
                 "time to sunrise",
                 minutes,
                 (BEFORE_SUNRISE_MIN, 720.0),
                 "minutes before sunrise (done well before the Sun is back)",
             ),
-            GroundRule::Clock(clock) => {
-                within("clock time", f64::from(clock.minutes()), (0.0, 1440.0), "minutes since midnight")
-            }
-            GroundRule::SiderealTime(time) => {
-                within("sidereal time", time.degrees(), (0.0, 360.0), "degrees (15 to the hour)")
-            }
+            GroundRule::Clock(clock) => within(
+                "clock time",
+                f64::from(clock.minutes()),
+                (0.0, 1440.0),
+                "minutes since midnight",
+            ),
+            GroundRule::SiderealTime(time) => within(
+                "sidereal time",
+                time.degrees(),
+                (0.0, 360.0),
+                "degrees (15 to the hour)",
+            ),
         }
         .map(|_| ())
     }
@@ -339,8 +388,14 @@ pub enum NotMet {
 impl fmt::Display for NotMet {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            NotMet::SunStaysAbove(lowest) => write!(f, "the Sun gets no lower than {:.1} deg", lowest.degrees()),
-            NotMet::SunStaysBelow(highest) => write!(f, "the Sun gets no higher than {:.1} deg", highest.degrees()),
+            NotMet::SunStaysAbove(lowest) => {
+                write!(f, "the Sun gets no lower than {:.1} deg", lowest.degrees())
+            }
+            NotMet::SunStaysBelow(highest) => write!(
+                f,
+                "the Sun gets no higher than {:.1} deg",
+                highest.degrees()
+            ),
             NotMet::SunUpAgain { night_minutes } => {
                 write!(f, "the Sun leaves {night_minutes:.0} minutes only")
             }
@@ -420,7 +475,11 @@ impl<R: GroundReadings> Finder<'_, R> {
         // A passage found to a quarter second may stand 0.001 degrees to either side.
         let slack = Angle::from_degrees(0.002);
         let sun_is_down = sun_altitude <= self.readings.sunset_altitude() + slack;
-        Ok(RuleInstant { instant, sun_altitude, sun_is_down })
+        Ok(RuleInstant {
+            instant,
+            sun_altitude,
+            sun_is_down,
+        })
     }
 
     /// The instant where the Sun is down there.
@@ -472,7 +531,11 @@ impl<R: GroundReadings> Finder<'_, R> {
             if (a.1 < 0.0) != (b.1 < 0.0) {
                 let days = root(a, b, TOLERANCE_DAYS, |days| Ok(self.sun(days)? - level))?;
                 if (from..to).contains(&days) {
-                    if a.1 < 0.0 { found.upward.push(days) } else { found.downward.push(days) }
+                    if a.1 < 0.0 {
+                        found.upward.push(days)
+                    } else {
+                        found.downward.push(days)
+                    }
                 }
             }
         }
@@ -489,11 +552,20 @@ impl<R: GroundReadings> Finder<'_, R> {
             return Ok(RuleNight::Met(self.seen(*days)?));
         }
         let (nearest, why) = if passages.lowest.1 >= altitude.radians() {
-            (passages.lowest, NotMet::SunStaysAbove(Angle::from_radians(passages.lowest.1)))
+            (
+                passages.lowest,
+                NotMet::SunStaysAbove(Angle::from_radians(passages.lowest.1)),
+            )
         } else {
-            (passages.highest, NotMet::SunStaysBelow(Angle::from_radians(passages.highest.1)))
+            (
+                passages.highest,
+                NotMet::SunStaysBelow(Angle::from_radians(passages.highest.1)),
+            )
         };
-        Ok(RuleNight::NotMet { why, nearest: self.nearest(nearest.0)? })
+        Ok(RuleNight::NotMet {
+            why,
+            nearest: self.nearest(nearest.0)?,
+        })
     }
 
     fn from_sunset(&self, minutes: f64, half: NightHalf) -> Result<RuleNight, R::Error> {
@@ -513,8 +585,17 @@ impl<R: GroundReadings> Finder<'_, R> {
         };
         let wanted = edge + sign * minutes / 1440.0;
         let other = match half {
-            NightHalf::Evening => passages.upward.iter().copied().find(|sunrise| *sunrise > edge),
-            NightHalf::Morning => passages.downward.iter().copied().rev().find(|sunset| *sunset < edge),
+            NightHalf::Evening => passages
+                .upward
+                .iter()
+                .copied()
+                .find(|sunrise| *sunrise > edge),
+            NightHalf::Morning => passages
+                .downward
+                .iter()
+                .copied()
+                .rev()
+                .find(|sunset| *sunset < edge),
         };
         let guard = match half {
             NightHalf::Evening => BEFORE_SUNRISE_MIN,
@@ -524,8 +605,14 @@ impl<R: GroundReadings> Finder<'_, R> {
             let night_minutes = (other - edge).abs() * 1440.0 - guard;
             if minutes > night_minutes {
                 return Ok(RuleNight::NotMet {
-                    why: NotMet::SunUpAgain { night_minutes: night_minutes.max(0.0) },
-                    nearest: if night_minutes > 0.0 { self.nearest(other - sign * guard / 1440.0)? } else { None },
+                    why: NotMet::SunUpAgain {
+                        night_minutes: night_minutes.max(0.0),
+                    },
+                    nearest: if night_minutes > 0.0 {
+                        self.nearest(other - sign * guard / 1440.0)?
+                    } else {
+                        None
+                    },
                 });
             }
         }
@@ -534,7 +621,10 @@ impl<R: GroundReadings> Finder<'_, R> {
 
     fn clock(&self, target: f64) -> Result<RuleNight, R::Error> {
         let (from, to) = (self.night.from, self.night.to);
-        let (start, end) = (self.readings.local_clock(from)?, self.readings.local_clock(to)?);
+        let (start, end) = (
+            self.readings.local_clock(from)?,
+            self.readings.local_clock(to)?,
+        );
         // Reading `target` for the first time from an instant whose clock is known, were there no change.
         let next = |known: Tt, reading: LocalClock| {
             known.days() + (target - reading.minutes).rem_euclid(1440.0) / 1440.0
@@ -546,17 +636,30 @@ impl<R: GroundReadings> Finder<'_, R> {
         let (mut before, mut after) = (from.days(), to.days());
         while after - before > TOLERANCE_DAYS {
             let middle = 0.5 * (before + after);
-            let offset = self.readings.local_clock(Tt::from_days(middle))?.utc_offset_minutes;
-            if offset == start.utc_offset_minutes { before = middle } else { after = middle }
+            let offset = self
+                .readings
+                .local_clock(Tt::from_days(middle))?
+                .utc_offset_minutes;
+            if offset == start.utc_offset_minutes {
+                before = middle
+            } else {
+                after = middle
+            }
         }
         if plain < after {
             return Ok(RuleNight::Met(self.seen(plain)?));
         }
-        let late = next(Tt::from_days(after), self.readings.local_clock(Tt::from_days(after))?);
+        let late = next(
+            Tt::from_days(after),
+            self.readings.local_clock(Tt::from_days(after))?,
+        );
         if late < to.days() {
             return Ok(RuleNight::Met(self.seen(late)?));
         }
-        Ok(RuleNight::NotMet { why: NotMet::SkippedByClocks, nearest: self.nearest(after)? })
+        Ok(RuleNight::NotMet {
+            why: NotMet::SkippedByClocks,
+            nearest: self.nearest(after)?,
+        })
     }
 
     fn sidereal_time(&self, target: Angle) -> Result<RuleNight, R::Error> {
@@ -584,7 +687,11 @@ pub fn survey_rule<R: GroundReadings>(
         .map(|night| rule_instant(rule, *night, readings))
         .collect::<Result<Vec<_>, _>>()?;
     let mut missed: Vec<Range<usize>> = Vec::new();
-    for (index, _) in found.iter().enumerate().filter(|(_, night)| matches!(night, RuleNight::NotMet { .. })) {
+    for (index, _) in found
+        .iter()
+        .enumerate()
+        .filter(|(_, night)| matches!(night, RuleNight::NotMet { .. }))
+    {
         match missed.last_mut() {
             Some(run) if run.end == index => run.end = index + 1,
             _ => missed.push(index..index + 1),
@@ -594,12 +701,20 @@ pub fn survey_rule<R: GroundReadings>(
     if let GroundRule::Clock(_) = rule {
         let mut before: Option<f64> = None;
         for (night, outcome) in found.iter().enumerate() {
-            let RuleNight::Met(seen) = outcome else { continue };
-            let offset = readings.local_clock(seen.instant).map_err(RuleError::Reading)?.utc_offset_minutes;
+            let RuleNight::Met(seen) = outcome else {
+                continue;
+            };
+            let offset = readings
+                .local_clock(seen.instant)
+                .map_err(RuleError::Reading)?
+                .utc_offset_minutes;
             if let Some(before) = before
                 && before != offset
             {
-                clock_changes.push(ClockChange { night, minutes: offset - before });
+                clock_changes.push(ClockChange {
+                    night,
+                    minutes: offset - before,
+                });
             }
             before = Some(offset);
         }
@@ -614,7 +729,12 @@ pub fn survey_rule<R: GroundReadings>(
             everywhere.then_some(other)
         }
     };
-    Ok(RuleSurvey { nights: found, missed, clock_changes, instead })
+    Ok(RuleSurvey {
+        nights: found,
+        missed,
+        clock_changes,
+        instead,
+    })
 }
 
 /// The nearest rule of the same kind that the missed nights would meet, rounded to what people set: a tenth of a degree,
@@ -634,21 +754,31 @@ fn other_rule(rule: GroundRule, found: &[RuleNight]) -> Option<GroundRule> {
             for why in reasons() {
                 match why {
                     // A tenth of a margin, for the lowest point itself is met in an instant only.
-                    NotMet::SunStaysAbove(lowest) => least = least.max((10.0 * lowest.degrees() + 0.1).ceil() / 10.0),
+                    NotMet::SunStaysAbove(lowest) => {
+                        least = least.max((10.0 * lowest.degrees() + 0.1).ceil() / 10.0)
+                    }
                     NotMet::SunStaysBelow(highest) => {
                         greatest = greatest.min((10.0 * highest.degrees() - 0.1).floor() / 10.0);
                     }
                     NotMet::SunUpAgain { .. } | NotMet::SkippedByClocks => return None,
                 }
             }
-            let altitude = if greatest == f64::MAX { least } else { greatest };
-            (altitude >= least && altitude <= HIGHEST_SUN_DEG)
-                .then_some(GroundRule::SunAltitude { altitude: Angle::from_degrees(altitude), half })
+            let altitude = if greatest == f64::MAX {
+                least
+            } else {
+                greatest
+            };
+            (altitude >= least && altitude <= HIGHEST_SUN_DEG).then_some(GroundRule::SunAltitude {
+                altitude: Angle::from_degrees(altitude),
+                half,
+            })
         }
         GroundRule::FromSunset { half, .. } => {
             let mut minutes = f64::MAX;
             for why in reasons() {
-                let NotMet::SunUpAgain { night_minutes } = why else { return None };
+                let NotMet::SunUpAgain { night_minutes } = why else {
+                    return None;
+                };
                 minutes = minutes.min(night_minutes.floor());
             }
             // Whether that is enough of a distance from the Sun, the check of the rule says.

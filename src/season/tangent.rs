@@ -99,11 +99,7 @@ impl TangentPlane {
     #[must_use]
     pub fn position_angle(&self) -> Angle {
         let (east, north) = east_and_north(self.centre);
-        Angle::from_radians(libm::atan2(
-            self.y_axis.dot(east),
-            self.y_axis.dot(north),
-        ))
-        .signed()
+        Angle::from_radians(libm::atan2(self.y_axis.dot(east), self.y_axis.dot(north))).signed()
     }
 
     /// Where a direction falls; `None` from a right angle off the centre (less 6") onward, and for what is no direction.
@@ -242,8 +238,7 @@ impl Rectangle {
     #[must_use]
     pub fn corners(&self) -> [Vec3; 4] {
         let (w, h) = self.half_sides();
-        [(-w, h), (w, h), (w, -h), (-w, -h)]
-            .map(|(x, y)| self.plane.direction(PlanePoint { x, y }))
+        [(-w, h), (w, h), (w, -h), (-w, -h)].map(|(x, y)| self.plane.direction(PlanePoint { x, y }))
     }
 
     /// The declination in the picture that is nearest to the equator, where the sky turns fastest.
@@ -251,8 +246,12 @@ impl Rectangle {
     pub fn declination_nearest_equator(&self) -> Angle {
         // A side is an arc of a great circle: away from the equator its ends are nearest to it.
         let latitudes = self.corners().map(|corner| corner.latitude());
-        let least = latitudes.into_iter().fold(Angle::QUARTER_TURN, |a, b| if b < a { b } else { a });
-        let greatest = latitudes.into_iter().fold(-Angle::QUARTER_TURN, |a, b| if b > a { b } else { a });
+        let least = latitudes
+            .into_iter()
+            .fold(Angle::QUARTER_TURN, |a, b| if b < a { b } else { a });
+        let greatest = latitudes
+            .into_iter()
+            .fold(-Angle::QUARTER_TURN, |a, b| if b > a { b } else { a });
         if least > Angle::ZERO {
             least
         } else if greatest < Angle::ZERO {
@@ -272,7 +271,11 @@ impl Rectangle {
     /// Whether a direction lies in the rectangle, edges included.
     #[must_use]
     pub fn holds(&self, direction: Vec3) -> bool {
-        direction.norm() > 0.0 && self.inside_edges(direction).iter().all(|distance| *distance >= 0.0)
+        direction.norm() > 0.0
+            && self
+                .inside_edges(direction)
+                .iter()
+                .all(|distance| *distance >= 0.0)
     }
 
     /// The part of the great-circle arc from `a` to `b` (less than 180 degrees) that lies within, as shares of the chord.
