@@ -141,7 +141,7 @@ impl Ground {
                 .dots
                 .iter()
                 .filter(|(centre, radius, _)| {
-                    offer.bounds.nearest(*centre).distance(*centre) < radius + 0.8
+                    offer.bounds.nearest(*centre).distance(*centre) < radius + 2.0
                 })
                 .map(|dot| dot.2)
                 .sum();

@@ -2,6 +2,7 @@
 //!
 //! Everything here is a pure function of its arguments; the charts above ask the ephemeris nothing.
 
+pub mod advice;
 pub mod close;
 mod compute;
 mod conditions;
@@ -11,13 +12,16 @@ pub mod exposure;
 pub mod framing;
 pub mod horizon;
 pub mod lens;
+pub mod log;
 mod loops;
 pub mod outlook;
+pub mod picks;
 mod search;
 pub mod stacking;
 pub mod tangent;
 mod track;
 mod types;
+pub mod weather;
 
 pub use compute::{next_season, season};
 pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
