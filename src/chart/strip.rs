@@ -8,7 +8,7 @@
 mod course;
 mod furniture;
 mod layout;
-mod marks;
+pub(super) mod marks;
 
 use crate::season::Season;
 use crate::sky::constellations::{Constellation, boundary_polylines};
@@ -30,8 +30,9 @@ pub struct StripView {
     /// Of the whole sheet, points.
     pub width: f64,
     pub height: f64,
-    /// Longitude grows to the left, as the sky is seen by someone facing the subject at its culmination south of the
-    /// zenith; turned round for the south.
+    /// Longitude grows to the left and north is up, as the sky is seen by someone facing the subject at its culmination
+    /// south of the zenith; `false` turns the sky by half a turn, for a culmination north of the zenith: longitude grows
+    /// to the right and south is up.
     pub east_left: bool,
     /// The piece of sky to show; `None` for all of the season's path, as large as it fits.
     pub window: Option<StripWindow>,
