@@ -33,10 +33,14 @@ pub enum Role {
     Dusk,
     Caution,
     Selection,
+    /// The sky of a night without the Moon.
+    Night,
+    /// The sky under the Moon, and the Moon itself.
+    Moonlight,
 }
 
 impl Role {
-    pub const ALL: [Role; 19] = [
+    pub const ALL: [Role; 21] = [
         Role::Ground,
         Role::Plate,
         Role::Ink,
@@ -54,6 +58,19 @@ impl Role {
         Role::StarCool,
         Role::Skyline,
         Role::Dusk,
+        Role::Caution,
+        Role::Selection,
+        Role::Night,
+        Role::Moonlight,
+    ];
+
+    /// The roles in which text may be set.
+    pub const TEXT: [Role; 7] = [
+        Role::Ink,
+        Role::FaintInk,
+        Role::RegionName,
+        Role::Companion,
+        Role::Sun,
         Role::Caution,
         Role::Selection,
     ];
@@ -81,6 +98,8 @@ impl Role {
             Role::Dusk => "dusk",
             Role::Caution => "caution",
             Role::Selection => "selection",
+            Role::Night => "night",
+            Role::Moonlight => "moonlight",
         }
     }
 }
@@ -148,6 +167,8 @@ impl Palette {
             (Role::Dusk, 0x9F_B0B8),
             (Role::Caution, 0xA8_2312),
             (Role::Selection, 0x1D_5FA8),
+            (Role::Night, 0x7F_929D),
+            (Role::Moonlight, 0xEC_E9DC),
         ],
     );
 
@@ -174,6 +195,8 @@ impl Palette {
             (Role::Dusk, 0x3A_5A78),
             (Role::Caution, 0xFF_8A6B),
             (Role::Selection, 0x8C_C8FF),
+            (Role::Night, 0x04_060A),
+            (Role::Moonlight, 0x8F_98A3),
         ],
     );
 
@@ -200,6 +223,8 @@ impl Palette {
             (Role::Dusk, 0x40_0B06),
             (Role::Caution, 0xF0_2E1A),
             (Role::Selection, 0xF0_2E1A),
+            (Role::Night, 0x02_0000),
+            (Role::Moonlight, 0x6A_140B),
         ],
     );
 
@@ -236,15 +261,6 @@ impl Palette {
 mod tests {
     use super::*;
 
-    const TEXT: [Role; 7] = [
-        Role::Ink,
-        Role::FaintInk,
-        Role::RegionName,
-        Role::Companion,
-        Role::Sun,
-        Role::Caution,
-        Role::Selection,
-    ];
     /// Lines that may lie beside each other and mean different things.
     const TRACKS: [Role; 5] = [
         Role::Subject,
@@ -288,7 +304,7 @@ mod tests {
     fn text_and_tracks_stand_out_in_light_and_dark() {
         for palette in [Palette::LIGHT, Palette::DARK] {
             for behind in [Role::Ground, Role::Plate].map(|role| palette.colour(role)) {
-                for role in TEXT {
+                for role in Role::TEXT {
                     let ratio = contrast(palette.colour(role), behind);
                     assert!(ratio >= 4.5, "{} {role:?} {ratio:.2}", palette.name);
                 }
@@ -300,7 +316,8 @@ mod tests {
         }
     }
 
-    /// Machado, Oliveira, Fernandes 2009, IEEE Trans. Vis. Comput. Graph. 15:1291, severity 1.0, on linear light;
+    /// Machado, Oliveira, Fernandes 2009, IEEE Trans. Vis. Comput. Graph. 15:1291, severity 1.0, on linear light
+    /// (compared with the table in the Python package colorspacious 1.1.2);
     /// CIE 1976 L*a*b* distance for D65 (CIE 15). The least distance of 10, about four just noticeable
     /// differences, is our choice.
     #[test]

@@ -180,7 +180,7 @@ mod tests {
     /// table 9.8.
     #[test]
     fn fit_of_the_exponential_gives_bessel_coefficients() {
-        let samples: Vec<[f64; 1]> = nodes(12).map(|x| [x.exp()]).collect();
+        let samples: Vec<[f64; 1]> = nodes(12).map(|x| [libm::exp(x)]).collect();
         let coefficients = fit(&samples);
         let bessel = [
             1.266_065_877_8,
@@ -192,8 +192,8 @@ mod tests {
         }
         for x in [-1.0, -0.77, 0.0, 0.31, 1.0_f64] {
             let ([value], [derivative]) = evaluate(&coefficients, x);
-            assert!((value - x.exp()).abs() < 1e-12);
-            assert!((derivative - x.exp()).abs() < 1e-10);
+            assert!((value - libm::exp(x)).abs() < 1e-12);
+            assert!((derivative - libm::exp(x)).abs() < 1e-10);
         }
     }
 

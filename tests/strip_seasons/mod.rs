@@ -68,7 +68,8 @@ pub fn season(name: &str) -> Season {
     read(name, text_of(name))
 }
 
-fn read(name: &str, file: &str) -> Season {
+/// Reads a season from the text of such a file.
+pub fn read(name: &str, file: &str) -> Season {
     let number = |word: &str| -> f64 { word.parse().unwrap_or_else(|_| panic!("{name}: {word}")) };
     let matrix = |words: &[&str]| {
         let n: Vec<f64> = words.iter().map(|word| number(word)).collect();

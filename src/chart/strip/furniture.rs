@@ -189,7 +189,7 @@ pub(super) fn edges(scene: &mut Scene, row: &StripRow) {
     for minute in multiples(row.latitude, row.half_height() + degrees(piece), 2 * piece) {
         let a = row.point(row.longitude, degrees(minute)).y;
         let b = row.point(row.longitude, degrees(minute + piece)).y;
-        let (top, bottom) = (b.max(frame.top), a.min(frame.bottom));
+        let (top, bottom) = (a.min(b).max(frame.top), a.max(b).min(frame.bottom));
         if top < bottom {
             block(scene, Rect::new(outer.left, top, frame.left, bottom));
             block(scene, Rect::new(frame.right, top, outer.right, bottom));
@@ -646,10 +646,11 @@ fn star_sizes(scale: f64) -> Entry {
 fn compass(east_left: bool) -> Entry {
     let mut scene = Scene::default();
     let (arm, tip) = (15.0, 3.0);
-    let foot = Point::new(if east_left { 26.0 } else { 12.0 }, SECOND_Y - 1.5);
+    // Half a turn for the southern sky: east to the right, north down.
+    let foot = if east_left { Point::new(26.0, SECOND_Y - 1.5) } else { Point::new(12.0, SECOND_Y - 13.5) };
     let side = if east_left { -1.0 } else { 1.0 };
     let stroke = Stroke::of(Role::FaintInk, 0.8);
-    let north = foot.moved(0.0, -arm);
+    let north = foot.moved(0.0, side * arm);
     let east = foot.moved(side * arm, 0.0);
     scene.add(
         MarkId::Sheet,
@@ -660,7 +661,7 @@ fn compass(east_left: bool) -> Entry {
         },
     );
     for (end, back) in [
-        (north, Point::new(0.0, 1.0)),
+        (north, Point::new(0.0, -side)),
         (east, Point::new(-side, 0.0)),
     ] {
         let across = back.turned();
@@ -682,7 +683,7 @@ fn compass(east_left: bool) -> Entry {
     write(
         &mut scene,
         MarkId::Sheet,
-        caption(north.moved(0.0, -4.5), "north").aligned(Align::Middle),
+        caption(north.moved(0.0, if east_left { -4.5 } else { 9.5 }), "north").aligned(Align::Middle),
     );
     let label = caption(east.moved(side * 4.5, 2.6), "east").aligned(if east_left {
         Align::End
