@@ -443,7 +443,7 @@ pub fn rule_instant<R: GroundReadings>(
     let finder = Finder { night, readings };
     match rule {
         GroundRule::SunAltitude { altitude, half } => finder.sun_altitude(altitude, half),
-        GroundRule::FromSunset { minutes, half } => finder.from_sunset(minutes, half),
+        GroundRule::FromSunset { minutes, half } => finder.minutes_off_sunset(minutes, half),
         GroundRule::Clock(clock) => finder.clock(f64::from(clock.minutes())),
         GroundRule::SiderealTime(time) => finder.sidereal_time(time),
     }
@@ -568,7 +568,7 @@ impl<R: GroundReadings> Finder<'_, R> {
         })
     }
 
-    fn from_sunset(&self, minutes: f64, half: NightHalf) -> Result<RuleNight, R::Error> {
+    fn minutes_off_sunset(&self, minutes: f64, half: NightHalf) -> Result<RuleNight, R::Error> {
         let horizon = self.readings.sunset_altitude();
         let passages = self.passages(horizon)?;
         let passage = match half {
