@@ -9,14 +9,23 @@ mod constellation_walk;
 pub mod events;
 pub mod horizon;
 mod loops;
+pub mod nights;
+mod openings;
 pub mod outlook;
 mod search;
+mod site_tracks;
+mod skyline_scan;
+mod spans;
+pub mod spells;
 mod track;
 mod types;
+pub mod visibility;
 
 pub use compute::{next_season, season};
 pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 pub use loops::{loops, synodic_days};
+pub use openings::{Closed, Condition, NightRules, Openings, Shortfall, SunDownRule};
+pub use site_tracks::{LocalSky, NightSpan, SiteTracks, Standing};
 pub use track::{strip_frame, track, track_step_days};
 pub use types::{
     Event, EventKind, EventValue, Loop, Other, Season, Span, StripFrame, Track, TrackCrossing,
