@@ -12,6 +12,8 @@ mod loops;
 pub mod nights;
 mod openings;
 pub mod outlook;
+pub mod purposes;
+pub mod quality;
 mod search;
 mod site_tracks;
 mod skyline_scan;
