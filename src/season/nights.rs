@@ -6,10 +6,9 @@
 //! happen in a night, [`Daylight`] and the altitudes say why.
 
 use super::search::minimum;
-use super::site_tracks::{NightSpan, SAMPLE_STEP, SiteTracks, Which};
+use super::site_tracks::{Limb, NightSpan, SAMPLE_STEP, SiteTracks, Which};
 use super::spans::Samples;
 use crate::sky::calendar::{CalendarError, CivilDate, DateTime};
-use crate::sky::physical::semidiameter;
 use crate::sky::time::SECONDS_PER_DAY;
 use crate::sky::{Angle, Body, Tt, Utc};
 
@@ -240,18 +239,17 @@ pub(super) const FASTEST: f64 = 6.75;
 
 /// Passages of the Moon's upper limb through the horizon with its 34' of refraction.
 fn moon_passages(tracks: &SiteTracks) -> Passages {
-    let threshold =
-        |distance: f64| (-(HORIZON_REFRACTION + semidiameter(Body::Moon, distance))).sin();
+    let limb = Limb::new(Body::Moon, -HORIZON_REFRACTION);
     let sampled = &tracks.sampled;
     let values: Vec<f64> = sampled
         .moon
         .iter()
         .zip(&sampled.moon_distance_au)
-        .map(|(sine, &distance)| sine - threshold(distance))
+        .map(|(sine, &distance)| sine - limb.sine(distance))
         .collect();
     passages(tracks, &values, FASTEST * FASTEST, |t| {
         let moon = tracks.standing(Which::Moon, t);
-        moon.direction.z - threshold(moon.distance_au)
+        moon.direction.z - limb.sine(moon.distance_au)
     })
 }
 

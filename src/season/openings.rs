@@ -4,7 +4,8 @@ use std::ops::Range;
 
 use super::conditions::{Conditions, Hours};
 use super::nights::{FASTEST, LocalClock};
-use super::site_tracks::{SAMPLE_STEP, SiteTracks, Which};
+use super::search::minimum;
+use super::site_tracks::{Limb, SAMPLE_STEP, SiteTracks, Which};
 use super::skyline_scan::{Point, point};
 use super::spans::{Samples, Stretch, clipped, intersection, total_days, union};
 use super::types::Span;
@@ -323,7 +324,7 @@ impl<'a> Sets<'a> {
 
     /// Where the upper limb of Sun or Moon is below the true horizon.
     fn below_horizon(&self, body: Body, cause: Cause) -> Vec<Stretch<Cause>> {
-        let threshold = |distance: f64| (self.horizon - semidiameter(body, distance)).sin();
+        let limb = Limb::new(body, self.horizon);
         let sampled = &self.tracks.sampled;
         let (which, sines, distances) = match body {
             Body::Moon => (Which::Moon, &sampled.moon, &sampled.moon_distance_au),
@@ -332,11 +333,11 @@ impl<'a> Sets<'a> {
         let values: Vec<f64> = sines
             .iter()
             .zip(distances)
-            .map(|(sine, &distance)| threshold(distance) - sine)
+            .map(|(sine, &distance)| limb.sine(distance) - sine)
             .collect();
         self.where_not_negative(&values, FASTEST * FASTEST, cause, |t| {
             let standing = self.tracks.standing(which, t);
-            threshold(standing.distance_au) - standing.direction.z
+            limb.sine(standing.distance_au) - standing.direction.z
         })
     }
 
@@ -406,17 +407,17 @@ impl<'a> Sets<'a> {
         if tracks.subject() == Body::Moon {
             return self.everything(cause);
         }
-        let edge = |distance: f64| semidiameter(Body::Moon, distance).cos();
+        let limb = Limb::new(Body::Moon, Angle::ZERO);
         let sampled = &tracks.sampled;
         let values: Vec<f64> = sampled
             .moon_cosine
             .iter()
             .zip(&sampled.moon_distance_au)
-            .map(|(cosine, &distance)| edge(distance) - cosine)
+            .map(|(cosine, &distance)| limb.cosine(distance) - cosine)
             .collect();
         self.where_not_negative(&values, CURVATURE, cause, |t| {
             let moon = tracks.standing(Which::Moon, t);
-            edge(moon.distance_au) - moon_cosine(tracks, t)
+            limb.cosine(moon.distance_au) - moon_cosine(tracks, t)
         })
     }
 
@@ -569,27 +570,38 @@ impl<'a> Sets<'a> {
     }
 }
 
-/// The smallest value of a function over a set, looked for at the ends and every five minutes.
+/// Where a function is least over a set, and its value: looked for at the ends and every twenty minutes, then narrowed. `None`
+/// for an empty set and where the function has no value.
 pub(super) fn least_within<C>(
     set: &[Stretch<C>],
     f: impl Fn(f64) -> Option<f64>,
 ) -> (Option<f64>, Option<f64>) {
-    const STEP: f64 = 5.0 / 1440.0;
-    let mut best: Option<(f64, f64)> = None;
+    let mut best: Option<(f64, f64, f64, f64)> = None;
     for stretch in set {
-        let steps = (stretch.days() / STEP).ceil().max(1.0);
+        let steps = (stretch.days() / SAMPLE_STEP).ceil().max(1.0);
+        let step = stretch.days() / steps;
         let mut k = 0.0;
         while k <= steps {
-            let t = stretch.from + stretch.days() * (k / steps);
-            match (f(t), best) {
-                (None, _) => return (None, None),
-                (Some(value), Some((_, least))) if value >= least => {}
-                (Some(value), _) => best = Some((t, value)),
+            let t = stretch.from + step * k;
+            let Some(value) = f(t) else {
+                return (None, None);
+            };
+            if best.is_none_or(|(_, least, ..)| value < least) {
+                let low = (t - step).max(stretch.from);
+                best = Some((t, value, low, (t + step).min(stretch.to)));
             }
             k += 1.0;
         }
     }
-    (best.map(|b| b.0), best.map(|b| b.1))
+    let Some((t, value, low, high)) = best else {
+        return (None, None);
+    };
+    /// Eight seconds.
+    const NARROW_DAYS: f64 = 1e-4;
+    let Ok((t, value)) = minimum(low, (t, value), high, NARROW_DAYS, |t| {
+        Ok::<_, std::convert::Infallible>(f(t).unwrap_or(f64::MAX))
+    });
+    (Some(t), Some(value))
 }
 
 fn moon_cosine(tracks: &SiteTracks, t: f64) -> f64 {

@@ -9,7 +9,7 @@
 use super::types::Span;
 use crate::sky::light::{MarsTerms, magnitude};
 use crate::sky::physical::semidiameter;
-use crate::sky::place::{LIGHT_AU_PER_DAY, Place, Sky, SkyError};
+use crate::sky::place::{AU_KM, LIGHT_AU_PER_DAY, Place, Sky, SkyError};
 use crate::sky::time::J2000_JD;
 use crate::sky::{Angle, Body, Cautions, Site, Tt, Utc, Vec3, frames};
 
@@ -407,6 +407,43 @@ impl SiteTracks {
             magnitude: between.magnitude(),
             diameter: semidiameter(self.subject, subject.distance_au) * 2.0,
         })
+    }
+}
+
+/// A round body touching a horizon with its upper limb, or another body with any.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Limb {
+    sin_horizon: f64,
+    cos_horizon: f64,
+    radius_au: f64,
+}
+
+impl Limb {
+    /// `horizon`: true altitude at which a point stands on the horizon.
+    pub(super) fn new(body: Body, horizon: Angle) -> Self {
+        let (sin_horizon, cos_horizon) = horizon.sin_cos();
+        Limb {
+            sin_horizon,
+            cos_horizon,
+            radius_au: body.radius_km() / AU_KM,
+        }
+    }
+
+    /// Sine and cosine of the semidiameter.
+    fn semidiameter(self, distance_au: f64) -> (f64, f64) {
+        let sin = (self.radius_au / distance_au).min(1.0);
+        (sin, (1.0 - sin * sin).sqrt())
+    }
+
+    /// Sine of the altitude of the centre when the upper limb is on the horizon.
+    pub(super) fn sine(self, distance_au: f64) -> f64 {
+        let (sin, cos) = self.semidiameter(distance_au);
+        self.sin_horizon * cos - self.cos_horizon * sin
+    }
+
+    /// Cosine of the semidiameter.
+    pub(super) fn cosine(self, distance_au: f64) -> f64 {
+        self.semidiameter(distance_au).1
     }
 }
 

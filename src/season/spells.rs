@@ -505,13 +505,11 @@ impl SpellMaker<'_> {
         (time * SECONDS_PER_DAY / 60.0).min(MOST_MINUTES)
     }
 
-    /// Whether the Sun is up and near at any time of the stretch.
+    /// Whether the Sun is up and near at any time of the stretch, looked at every two minutes and at its ends.
     fn cautions(&self, stretch: &Stretch<Cause>) -> Cautions {
+        const STEPS_PER_DAY: f64 = 720.0;
         let sound = self.tracks.cautions();
-        if let Some((after, before)) = self.rules.sun_down.minutes()
-            && after >= 0.0
-            && before >= 0.0
-        {
+        if self.rules.sun_down.minutes().is_some() {
             return sound;
         }
         let site = self.tracks.site();
@@ -522,9 +520,11 @@ impl SpellMaker<'_> {
             let subject = self.tracks.standing(Which::Subject, days);
             limb >= horizon && subject.separation(&sun) < self.rules.sun_distance
         };
-        let set = std::slice::from_ref(stretch);
-        let (_, least) = least_within(set, |days| Some(if near(days) { 0.0 } else { 1.0 }));
-        sound.with_if(least == Some(0.0), Caution::SunNear)
+        let steps = (stretch.days() * STEPS_PER_DAY).ceil().max(1.0) as usize;
+        let any = (0..=steps)
+            .map(|k| stretch.from + stretch.days() * k as f64 / steps as f64)
+            .any(near);
+        sound.with_if(any, Caution::SunNear)
     }
 
     fn behind_skyline(&self, windows: impl Iterator<Item = Stretch<Cause>>) -> Closed {

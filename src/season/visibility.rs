@@ -9,7 +9,7 @@
 
 use std::f64::consts::TAU;
 
-use super::site_tracks::{LocalSky, NightSpan, SiteTracks};
+use super::site_tracks::{LocalSky, NightSpan, SiteTracks, Which};
 use crate::sky::light::{Geometry, MarsTerms, magnitude};
 use crate::sky::refraction::apparent_from_true;
 use crate::sky::{Angle, Body, Site, Skyline, Tdb, Tt, Vec3};
@@ -617,13 +617,13 @@ fn best_of_night(
     for k in 0..STEPS {
         let share = (k as f64 + 0.5) / STEPS as f64;
         let instant = night.span.from.plus_days(share * night.span.days());
-        let Some(local) = tracks.at(instant) else {
-            continue;
-        };
-        let sun = local.sun.altitude();
+        let sun = tracks.standing(Which::Sun, instant.days()).altitude();
         if sun >= SUN_GONE || sun < DARK {
             continue;
         }
+        let Some(local) = tracks.at(instant) else {
+            continue;
+        };
         let altitude = apparent_from_true(local.subject.altitude(), &site.air);
         if altitude < skyline.altitude_at(local.subject.azimuth()) {
             continue;
