@@ -128,8 +128,8 @@ fn the_sidereal_day_is_four_minutes_shorter() {
     assert!(turn_after(1.0 - minutes / 1_440.0).abs() < 0.02);
 }
 
-/// Common practice, no source: Mercury is seen only soon after sunset or before sunrise. It never rises more than two
-/// and a half hours before the Sun nor sets so much after it, at middle latitudes.
+/// Common practice, no source: Mercury is seen only soon after sunset or before sunrise. It rises and sets within three
+/// hours of the Sun at middle latitudes.
 #[test]
 fn mercury_keeps_close_to_the_sun() {
     let sky = Sky::de440().unwrap();
@@ -145,7 +145,7 @@ fn mercury_keeps_close_to_the_sun() {
             found[0].instant.days()
         };
         let hours = ((of(Body::Mercury) - of(Body::Sun)) * 24.0 + 12.0).rem_euclid(24.0) - 12.0;
-        assert!(hours.abs() < 2.5, "{hours} h");
+        assert!(hours.abs() < 3.0, "{hours} h");
     }
 }
 
