@@ -44,7 +44,10 @@ fn without_words_it_writes_the_season_sheet() {
     }
     let sheet = folder.path().join("season-sheet");
     for name in ["strip.svg", "strip.png", "events.csv", "places.csv"] {
-        assert!(fs::metadata(sheet.join(name)).unwrap().len() > 500, "{name}");
+        assert!(
+            fs::metadata(sheet.join(name)).unwrap().len() > 500,
+            "{name}"
+        );
     }
     let svg = fs::read_to_string(sheet.join("strip.svg")).unwrap();
     assert!(roxmltree::Document::parse(&svg).is_ok());
@@ -59,9 +62,21 @@ fn without_words_it_writes_the_season_sheet() {
     let output = loopwright(folder.path(), &["sheet"]);
     assert_eq!(output.status.code(), Some(1));
     assert!(text(&output.stderr).contains("events.csv"));
-    assert_eq!(fs::read_to_string(sheet.join("events.csv")).unwrap(), "mine\n");
-    assert_eq!(loopwright(folder.path(), &["sheet", "--replace"]).status.code(), Some(0));
-    assert!(fs::read_to_string(sheet.join("events.csv")).unwrap().starts_with("body,kind,jd_tt,utc,value,"));
+    assert_eq!(
+        fs::read_to_string(sheet.join("events.csv")).unwrap(),
+        "mine\n"
+    );
+    assert_eq!(
+        loopwright(folder.path(), &["sheet", "--replace"])
+            .status
+            .code(),
+        Some(0)
+    );
+    assert!(
+        fs::read_to_string(sheet.join("events.csv"))
+            .unwrap()
+            .starts_with("body,kind,jd_tt,utc,value,")
+    );
 }
 
 #[test]
@@ -73,8 +88,17 @@ fn every_shipped_scenario_makes_a_sheet() {
         let path = entry.unwrap().path();
         if path.extension().is_some_and(|extension| extension == "ron") {
             let out = format!("out{count}");
-            let output = loopwright(folder.path(), &["sheet", path.to_str().unwrap(), "--out", &out]);
-            assert_eq!(output.status.code(), Some(0), "{}: {}", path.display(), text(&output.stderr));
+            let output = loopwright(
+                folder.path(),
+                &["sheet", path.to_str().unwrap(), "--out", &out],
+            );
+            assert_eq!(
+                output.status.code(),
+                Some(0),
+                "{}: {}",
+                path.display(),
+                text(&output.stderr)
+            );
             assert!(text(&output.stdout).lines().count() > 20);
             count += 1;
         }
@@ -87,7 +111,13 @@ fn places_keep_the_order_and_decimals_of_the_file() {
     let folder = tempfile::tempdir().unwrap();
     let instants = "# two instants\n2027-02-19T16:00:00.250Z\nJD 2423196.947002845 TT\n";
     fs::write(folder.path().join("instants.txt"), instants).unwrap();
-    let words = ["places", "--bodies", "mars,moon", "--instants", "instants.txt"];
+    let words = [
+        "places",
+        "--bodies",
+        "mars,moon",
+        "--instants",
+        "instants.txt",
+    ];
     let output = loopwright(folder.path(), &words);
     assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
     let csv = text(&output.stdout);
@@ -97,7 +127,11 @@ fn places_keep_the_order_and_decimals_of_the_file() {
         "body,utc,jd_tt,ra_deg,dec_deg,lon_deg,lat_deg,distance_au,sun_distance_au,elongation_deg,phase_angle_deg,\
          lit_fraction,diameter_arcsec,magnitude,constellation,altitude_deg,apparent_altitude_deg,azimuth_deg,caution"
     );
-    assert!(lines[1].starts_with("mars,2027-02-19T16:00:00.250Z,"), "{}", lines[1]);
+    assert!(
+        lines[1].starts_with("mars,2027-02-19T16:00:00.250Z,"),
+        "{}",
+        lines[1]
+    );
     assert!(lines[2].starts_with("moon,2027-02-19T16:00:00.250Z,"));
     assert!(lines[3].contains(",2423196.947002845,"), "{}", lines[3]);
     assert_eq!(lines.len(), 5);
@@ -113,15 +147,33 @@ fn places_keep_the_order_and_decimals_of_the_file() {
 fn negative_coordinates_are_plain_arguments() {
     let folder = tempfile::tempdir().unwrap();
     let words = [
-        "places", "--bodies", "venus", "--from", "2029-10-01T10:00:00Z", "--to", "2029-10-01T12:00:00Z", "--step", "1h",
-        "--site", "-35.0,-70.5,-12",
+        "places",
+        "--bodies",
+        "venus",
+        "--from",
+        "2029-10-01T10:00:00Z",
+        "--to",
+        "2029-10-01T12:00:00Z",
+        "--step",
+        "1h",
+        "--site",
+        "-35.0,-70.5,-12",
     ];
     let output = loopwright(folder.path(), &words);
     assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
     let csv = text(&output.stdout);
-    assert_eq!(csv.lines().count(), 3, "the end does not belong to the span");
+    assert_eq!(
+        csv.lines().count(),
+        3,
+        "the end does not belong to the span"
+    );
     let mut reader = csv::Reader::from_reader(csv.as_bytes());
-    let column = reader.headers().unwrap().iter().position(|name| name == "altitude_deg").unwrap();
+    let column = reader
+        .headers()
+        .unwrap()
+        .iter()
+        .position(|name| name == "altitude_deg")
+        .unwrap();
     for row in reader.records() {
         row.unwrap()[column].parse::<f64>().unwrap();
     }
@@ -132,11 +184,15 @@ fn events_of_a_place_are_found_and_missing_ones_are_named() {
     let folder = tempfile::tempdir().unwrap();
     let sun = |site: &str, from: &str, to: &str| {
         let words = [
-            "events", "--bodies", "sun", "--from", from, "--to", to, "--site", site, "--kinds", "rise,set",
+            "events", "--bodies", "sun", "--from", from, "--to", to, "--site", site, "--kinds",
+            "rise,set",
         ];
         let output = loopwright(folder.path(), &words);
         assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
-        (text(&output.stdout).lines().count() - 1, text(&output.stderr))
+        (
+            text(&output.stdout).lines().count() - 1,
+            text(&output.stderr),
+        )
     };
     let (count, _) = sun("50,10,0", "2026-12-01", "2026-12-03");
     assert_eq!(count, 4);
@@ -144,14 +200,25 @@ fn events_of_a_place_are_found_and_missing_ones_are_named() {
     for (from, to) in [("2026-06-01", "2026-06-11"), ("2026-12-01", "2026-12-11")] {
         let (count, message) = sun("90,0,0", from, to);
         assert_eq!(count, 0);
-        assert!(message.contains("Sun") && message.contains("rise, set"), "{message}");
+        assert!(
+            message.contains("Sun") && message.contains("rise, set"),
+            "{message}"
+        );
     }
 }
 
 #[test]
 fn remote_and_ancient_times_carry_their_cautions() {
     let folder = tempfile::tempdir().unwrap();
-    let words = ["places", "--bodies", "mars", "--from", "-0746-02-26", "--to", "-0746-02-27"];
+    let words = [
+        "places",
+        "--bodies",
+        "mars",
+        "--from",
+        "-0746-02-26",
+        "--to",
+        "-0746-02-27",
+    ];
     let output = loopwright(folder.path(), &words);
     assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
     let csv = text(&output.stdout);
@@ -163,23 +230,104 @@ fn remote_and_ancient_times_carry_their_cautions() {
 #[test]
 fn wrong_words_end_with_status_2() {
     for (words, expected) in [
-        (&["places", "--bodies", "vulcan", "--from", "2026", "--to", "2027"][..], "vulcan"),
-        (&["places", "--bodies", "mars", "--from", "2026", "--to", "2025"][..], "later"),
-        (&["places", "--bodies", "mars", "--from", "2026-13-01", "--to", "2027"][..], "2026-13-01"),
-        (&["places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--step", "0"][..], "step"),
-        (&["places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--step", "NaNd"][..], "step"),
-        (&["places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--site", "91,0,0"][..], "latitude"),
-        (&["places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--site", "NaN,0,0"][..], "latitude"),
+        (
+            &[
+                "places", "--bodies", "vulcan", "--from", "2026", "--to", "2027",
+            ][..],
+            "vulcan",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "2026", "--to", "2025",
+            ][..],
+            "later",
+        ),
+        (
+            &[
+                "places",
+                "--bodies",
+                "mars",
+                "--from",
+                "2026-13-01",
+                "--to",
+                "2027",
+            ][..],
+            "2026-13-01",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--step", "0",
+            ][..],
+            "step",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--step", "NaNd",
+            ][..],
+            "step",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--site", "91,0,0",
+            ][..],
+            "latitude",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "2026", "--to", "2027", "--site", "NaN,0,0",
+            ][..],
+            "latitude",
+        ),
         (&["places", "--bodies", "mars"][..], "--from"),
-        (&["events", "--bodies", "mars", "--from", "2026", "--to", "2027", "--kinds", "eclipse"][..], "eclipse"),
-        (&["events", "--bodies", "mars", "--from", "2026", "--to", "2027", "--kinds", "rise"][..], "--site"),
+        (
+            &[
+                "events", "--bodies", "mars", "--from", "2026", "--to", "2027", "--kinds",
+                "eclipse",
+            ][..],
+            "eclipse",
+        ),
+        (
+            &[
+                "events", "--bodies", "mars", "--from", "2026", "--to", "2027", "--kinds", "rise",
+            ][..],
+            "--site",
+        ),
         (&["new", "--subject", "moon", "--site", "1,2,3"][..], "moon"),
-        (&["new", "--subject", "mars", "--site", "1,2,3", "--zone", "Europe/Berln"][..], "Europe/Berlin"),
-        (&["new", "--subject", "mars", "--from", "2027", "--to", "2026", "--site", "1,2,3", "--zone", "UTC"][..], "later"),
+        (
+            &[
+                "new",
+                "--subject",
+                "mars",
+                "--site",
+                "1,2,3",
+                "--zone",
+                "Europe/Berln",
+            ][..],
+            "Europe/Berlin",
+        ),
+        (
+            &[
+                "new",
+                "--subject",
+                "mars",
+                "--from",
+                "2027",
+                "--to",
+                "2026",
+                "--site",
+                "1,2,3",
+                "--zone",
+                "UTC",
+            ][..],
+            "later",
+        ),
         (&["nonsense.ron", "more"][..], "more"),
     ] {
         let message = refused(words, 2);
-        assert!(message.to_lowercase().contains(&expected.to_lowercase()), "{words:?}: {message}");
+        assert!(
+            message.to_lowercase().contains(&expected.to_lowercase()),
+            "{words:?}: {message}"
+        );
     }
 }
 
@@ -188,10 +336,28 @@ fn what_cannot_be_done_ends_with_status_1() {
     for (words, expected) in [
         (&["sheet", "missing.ron"][..], "missing.ron"),
         (&["missing.ron"][..], "missing.ron"),
-        (&["places", "--bodies", "mars", "--instants", "missing.txt"][..], "missing.txt"),
-        (&["places", "--bodies", "mars", "--from", "-2500", "--to", "-2499"][..], "-2000"),
-        (&["places", "--bodies", "mars", "--from", "3500", "--to", "3501"][..], "3000"),
-        (&["events", "--bodies", "mars", "--from", "2990", "--to", "3500"][..], "3000"),
+        (
+            &["places", "--bodies", "mars", "--instants", "missing.txt"][..],
+            "missing.txt",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "-2500", "--to", "-2499",
+            ][..],
+            "-2000",
+        ),
+        (
+            &[
+                "places", "--bodies", "mars", "--from", "3500", "--to", "3501",
+            ][..],
+            "3000",
+        ),
+        (
+            &[
+                "events", "--bodies", "mars", "--from", "2990", "--to", "3500",
+            ][..],
+            "3000",
+        ),
     ] {
         let message = refused(words, 1);
         assert!(message.contains(expected), "{words:?}: {message}");
@@ -201,13 +367,27 @@ fn what_cannot_be_done_ends_with_status_1() {
 #[test]
 fn a_bad_line_among_instants_is_named() {
     let folder = tempfile::tempdir().unwrap();
-    fs::write(folder.path().join("instants.txt"), "2026-01-01T00:00:00Z\nsoon\n").unwrap();
-    let output = loopwright(folder.path(), &["places", "--bodies", "mars", "--instants", "instants.txt"]);
+    fs::write(
+        folder.path().join("instants.txt"),
+        "2026-01-01T00:00:00Z\nsoon\n",
+    )
+    .unwrap();
+    let output = loopwright(
+        folder.path(),
+        &["places", "--bodies", "mars", "--instants", "instants.txt"],
+    );
     assert_eq!(output.status.code(), Some(1));
-    assert!(text(&output.stderr).contains("line 2"), "{}", text(&output.stderr));
+    assert!(
+        text(&output.stderr).contains("line 2"),
+        "{}",
+        text(&output.stderr)
+    );
     assert_eq!(output.stdout, b"");
     fs::write(folder.path().join("instants.txt"), [0xff, 0xfe, 0x00]).unwrap();
-    let output = loopwright(folder.path(), &["places", "--bodies", "mars", "--instants", "instants.txt"]);
+    let output = loopwright(
+        folder.path(),
+        &["places", "--bodies", "mars", "--instants", "instants.txt"],
+    );
     assert_eq!(output.status.code(), Some(1));
     assert!(text(&output.stderr).contains("UTF-8"));
 }
@@ -220,7 +400,11 @@ fn huge_and_binary_scenarios_are_refused() {
     fs::File::create(&path).unwrap().set_len(100 << 20).unwrap();
     let output = loopwright(folder.path(), &["sheet", "huge.ron"]);
     assert_eq!(output.status.code(), Some(1));
-    assert!(text(&output.stderr).contains("huge.ron"), "{}", text(&output.stderr));
+    assert!(
+        text(&output.stderr).contains("huge.ron"),
+        "{}",
+        text(&output.stderr)
+    );
     fs::write(&path, [0x80, 0x81, 0x82]).unwrap();
     let output = loopwright(folder.path(), &["sheet", "huge.ron"]);
     assert_eq!(output.status.code(), Some(1));
@@ -231,9 +415,14 @@ fn huge_and_binary_scenarios_are_refused() {
 #[cfg(target_os = "linux")]
 #[test]
 fn a_full_disk_is_said_and_is_no_panic() {
-    let full = fs::OpenOptions::new().write(true).open("/dev/full").unwrap();
+    let full = fs::OpenOptions::new()
+        .write(true)
+        .open("/dev/full")
+        .unwrap();
     let output = Command::new(env!("CARGO_BIN_EXE_loopwright"))
-        .args(["places", "--bodies", "mars", "--from", "2026", "--to", "2027"])
+        .args([
+            "places", "--bodies", "mars", "--from", "2026", "--to", "2027",
+        ])
         .stdout(full)
         .stderr(Stdio::piped())
         .output()
@@ -246,7 +435,9 @@ fn a_full_disk_is_said_and_is_no_panic() {
 #[test]
 fn a_closed_pipe_is_nothing_to_speak_of() {
     let mut child = Command::new(env!("CARGO_BIN_EXE_loopwright"))
-        .args(["places", "--bodies", "all", "--from", "1990", "--to", "2020"])
+        .args([
+            "places", "--bodies", "all", "--from", "1990", "--to", "2020",
+        ])
         .stdout(Stdio::piped())
         .stderr(Stdio::piped())
         .spawn()
@@ -262,10 +453,17 @@ fn a_closed_pipe_is_nothing_to_speak_of() {
 fn a_folder_that_cannot_be_made_is_named() {
     let folder = tempfile::tempdir().unwrap();
     // A file where the folder should be: works for root, whom permissions do not stop.
-    fs::File::create(folder.path().join("taken")).unwrap().write_all(b"mine").unwrap();
+    fs::File::create(folder.path().join("taken"))
+        .unwrap()
+        .write_all(b"mine")
+        .unwrap();
     let output = loopwright(folder.path(), &["sheet", "--out", "taken"]);
     assert_eq!(output.status.code(), Some(1));
-    assert!(text(&output.stderr).contains("taken"), "{}", text(&output.stderr));
+    assert!(
+        text(&output.stderr).contains("taken"),
+        "{}",
+        text(&output.stderr)
+    );
     assert_eq!(fs::read(folder.path().join("taken")).unwrap(), b"mine");
 }
 
@@ -273,21 +471,52 @@ fn a_folder_that_cannot_be_made_is_named() {
 fn new_writes_a_scenario_that_opens() {
     let folder = tempfile::tempdir().unwrap();
     let words = [
-        "new", "--subject", "venus", "--from", "2029-07", "--to", "2030-02", "--site", "-35.1,138.6,50", "--zone",
-        "Australia/Adelaide", "--out", "venus.ron",
+        "new",
+        "--subject",
+        "venus",
+        "--from",
+        "2029-07",
+        "--to",
+        "2030-02",
+        "--site",
+        "-35.1,138.6,50",
+        "--zone",
+        "Australia/Adelaide",
+        "--out",
+        "venus.ron",
     ];
     let output = loopwright(folder.path(), &words);
     assert_eq!(output.status.code(), Some(0), "{}", text(&output.stderr));
-    assert_eq!(loopwright(folder.path(), &["sheet", "venus.ron"]).status.code(), Some(0));
+    assert_eq!(
+        loopwright(folder.path(), &["sheet", "venus.ron"])
+            .status
+            .code(),
+        Some(0)
+    );
     // A second time it is left alone.
     let output = loopwright(folder.path(), &words);
     assert_eq!(output.status.code(), Some(1));
     assert!(text(&output.stderr).contains("--replace"));
     // Without dates the next season is taken, for every planet.
-    for subject in ["mercury", "venus", "mars", "jupiter", "saturn", "uranus", "neptune"] {
-        let words = ["new", "--subject", subject, "--site", "50,10,100", "--zone", "Europe/Berlin"];
+    for subject in [
+        "mercury", "venus", "mars", "jupiter", "saturn", "uranus", "neptune",
+    ] {
+        let words = [
+            "new",
+            "--subject",
+            subject,
+            "--site",
+            "50,10,100",
+            "--zone",
+            "Europe/Berlin",
+        ];
         let output = loopwright(folder.path(), &words);
-        assert_eq!(output.status.code(), Some(0), "{subject}: {}", text(&output.stderr));
+        assert_eq!(
+            output.status.code(),
+            Some(0),
+            "{subject}: {}",
+            text(&output.stderr)
+        );
         assert!(text(&output.stdout).contains("from:"), "{subject}");
     }
 }

@@ -360,7 +360,7 @@ fn a_point_on_the_track_tells_its_date_and_a_label_its_event() {
 }
 
 #[test]
-fn turning_east_to_the_right_mirrors_the_sky() {
+fn turning_the_strip_turns_it_by_half_a_turn() {
     let season = season("saturn_2025");
     let text = StripText::default();
     let left = StripView::A4.layout(&season, &text).rows[0];
@@ -372,6 +372,11 @@ fn turning_east_to_the_right_mirrors_the_sky() {
     // Longitude grows to the left across 0 degrees.
     assert!(left.point(1.0, 0.0).x < left.point(359.0, 0.0).x);
     assert!(right.point(1.0, 0.0).x > right.point(359.0, 0.0).x);
+    // No mirror image: with east to the right south is up, and the way back leads to the same place.
+    assert!(left.point(0.0, 1.0).y < left.point(0.0, -1.0).y);
+    assert!(right.point(0.0, 1.0).y > right.point(0.0, -1.0).y);
+    let (longitude, latitude) = right.place(right.point(3.0, 1.5));
+    assert!((longitude - 3.0).abs() < 1e-9 && (latitude - 1.5).abs() < 1e-9);
     // One degree is as long along as across.
     let along = left.point(0.0, 0.0).distance(left.point(1.0, 0.0));
     let across = left.point(0.0, 0.0).distance(left.point(0.0, 1.0));

@@ -6,7 +6,7 @@
 //! the 20" of aberration. Every coordinate goes through the mapping of the strip's rows, which may stand on their head.
 
 use crate::season::Season;
-use crate::season::moment::{Moment, Readings};
+use crate::season::moment::{Moment, Readings, Twilight};
 use crate::sky::refraction::{Air, true_from_apparent};
 use crate::sky::{Angle, Body, Mat3, Skyline, Vec3};
 
@@ -33,6 +33,27 @@ pub struct Outline {
     /// Unit vectors east, north, up, un-refracted, going round with azimuth.
     corners: Vec<Vec3>,
     parts: Vec<Part>,
+    compass: Vec<CompassPoint>,
+}
+
+/// A place on the edge that is marked on a panorama board.
+#[derive(Clone, Debug)]
+struct CompassPoint {
+    edge: Vec3,
+    /// Half a degree below it.
+    below: Vec3,
+    kind: CompassKind,
+}
+
+#[derive(Clone, Debug)]
+enum CompassKind {
+    /// N, NE, E and so on.
+    Main(&'static str),
+    /// NNE, ENE and so on.
+    Between(&'static str),
+    /// Whole tens of degrees.
+    Degrees(String),
+    Tick,
 }
 
 /// A part of the skyline that has a name.
@@ -76,12 +97,48 @@ impl Outline {
                 }),
             }
         }
-        Outline {
+        let mut outline = Outline {
             skyline: skyline.clone(),
             air: *air,
             corners,
             parts,
-        }
+            compass: Vec::new(),
+        };
+        outline.compass = outline.compass_points();
+        outline
+    }
+
+    /// The horizon's points first, then degrees.
+    fn compass_points(&self) -> Vec<CompassPoint> {
+        const POINTS: [&str; 16] = [
+            "N", "NNE", "NE", "ENE", "E", "ESE", "SE", "SSE", "S", "SSW", "SW", "WSW", "W", "WNW",
+            "NW", "NNW",
+        ];
+        let point = |azimuth_degrees: f64, kind: CompassKind| {
+            let azimuth = Angle::from_degrees(azimuth_degrees);
+            CompassPoint {
+                edge: self.edge(azimuth, Angle::ZERO),
+                below: self.edge(azimuth, Angle::from_degrees(0.5)),
+                kind,
+            }
+        };
+        let named = (0_u32..).zip(POINTS).map(|(index, name)| {
+            let kind = if index % 2 == 0 {
+                CompassKind::Main(name)
+            } else {
+                CompassKind::Between(name)
+            };
+            point(22.5 * f64::from(index), kind)
+        });
+        let degrees = (0_u32..360).step_by(5).map(|degree| {
+            let kind = if degree % 10 == 0 && degree % 45 != 0 {
+                CompassKind::Degrees(format!("{degree}°"))
+            } else {
+                CompassKind::Tick
+            };
+            point(f64::from(degree), kind)
+        });
+        named.chain(degrees).collect()
     }
 
     /// Whether a local direction (east, north, up; un-refracted) lies below the skyline.
@@ -130,12 +187,12 @@ pub struct OverlayStyle<'a> {
 /// What lies over what when an overlay is laid over its strip.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Level {
-    /// The strip's paper.
-    Paper,
+    /// The strip's paper, its stars and constellations with their names: what drowns in twilight.
+    Stars,
     /// The overlay's dusk and glare.
     Shade,
-    /// The strip's stars, lines, paths and their names.
-    Sky,
+    /// The strip's scale, paths and their names.
+    Paths,
     /// The overlay's silhouette.
     Skyline,
     /// The strip's events and dates, which stay legible over the silhouette, and its frame.
@@ -148,15 +205,15 @@ impl Level {
     /// The level of a mark of the strip.
     #[must_use]
     pub const fn of_strip(mark: &Mark) -> Self {
-        let is_note = matches!(
-            mark.id,
-            MarkId::Event(_) | MarkId::Tick(_) | MarkId::Sheet | MarkId::Scale
-        );
-        match mark.layer {
-            Layer::Sheet | Layer::Plate => Level::Paper,
-            Layer::Frame => Level::Notes,
-            Layer::Leaders | Layer::Labels | Layer::Marks if is_note => Level::Notes,
-            _ => Level::Sky,
+        match (mark.layer, mark.id) {
+            (Layer::Sheet | Layer::Plate | Layer::Boundaries | Layer::Stars, _)
+            | (_, MarkId::Star(_) | MarkId::Constellation(_)) => Level::Stars,
+            (Layer::Frame, _)
+            | (
+                Layer::Leaders | Layer::Labels | Layer::Marks,
+                MarkId::Event(_) | MarkId::Tick(_) | MarkId::Sheet | MarkId::Scale,
+            ) => Level::Notes,
+            _ => Level::Paths,
         }
     }
 
@@ -227,9 +284,11 @@ pub fn skyline_overlay(
     };
     let ecliptic_from_local =
         season.frame.ecliptic_from_icrs * moment.axes.local_from_icrs.transposed();
+    let corners = corners_on_ecliptic(outline, ecliptic_from_local);
     for row in &layout.rows {
         let mut painter = RowPainter {
             scene: &mut scene,
+            corners: &corners,
             map: RowMap::new(row, ecliptic_from_local),
             outline,
             moment,
@@ -309,16 +368,37 @@ impl<'a> RowMap<'a> {
     }
 }
 
-/// A corner of the skyline on the row's map: degrees east of its middle, not wrapped, and latitude.
+/// A corner of the skyline on the ecliptic, degrees, its longitude running on from the corner before.
 #[derive(Clone, Copy)]
 struct Corner {
-    east: f64,
+    longitude: f64,
     latitude: f64,
+}
+
+/// The skyline once round, its first corner repeated at the end.
+fn corners_on_ecliptic(outline: &Outline, ecliptic_from_local: Mat3) -> Vec<Corner> {
+    let around = outline.corners.iter().chain(outline.corners.first());
+    let mut directions = around.map(|&local| ecliptic_from_local * local);
+    let mut corners = Vec::with_capacity(outline.corners.len() + 1);
+    let Some(first) = directions.next() else {
+        return corners;
+    };
+    corners.push(Corner {
+        longitude: first.longitude().degrees(),
+        latitude: first.latitude().degrees(),
+    });
+    let mut last = first;
+    for next in directions {
+        walk(&mut corners, last, next, 10);
+        last = next;
+    }
+    corners
 }
 
 struct RowPainter<'a> {
     scene: &'a mut Scene,
     map: RowMap<'a>,
+    corners: &'a [Corner],
     outline: &'a Outline,
     moment: &'a Moment,
     season: &'a Season,
@@ -424,7 +504,8 @@ impl RowPainter<'_> {
             }
             let stop = |part: f64, amount: f64, opacity: f64| Stop {
                 part,
-                paint: Paint::mixed(Role::Plate, Role::Caution, amount).faded(opacity * strength),
+                paint: Paint::mixed(Role::Moonlight, Role::Caution, amount)
+                    .faded(opacity * strength),
             };
             self.scene.add(
                 MarkId::Sheet,
@@ -433,10 +514,10 @@ impl RowPainter<'_> {
                     polygon: row.frame.corners().to_vec(),
                     run: Run::Around { centre, radius },
                     stops: vec![
-                        stop(0.0, 0.5, 0.85),
-                        stop(0.12, 0.65, 0.7),
-                        stop(0.4, 0.85, 0.36),
-                        stop(0.75, 1.0, 0.12),
+                        stop(0.0, 0.1, 0.95),
+                        stop(0.1, 0.3, 0.8),
+                        stop(0.3, 0.55, 0.42),
+                        stop(0.65, 0.8, 0.13),
                         stop(1.0, 1.0, 0.0),
                     ],
                 },
@@ -444,47 +525,26 @@ impl RowPainter<'_> {
         }
     }
 
-    /// The skyline on the row's map, once round, its first corner repeated at the end.
-    fn corners(&self) -> Vec<Corner> {
-        let mut directions = self
-            .outline
-            .corners
-            .iter()
-            .chain(self.outline.corners.first())
-            .map(|&local| self.map.ecliptic_from_local * local);
-        let mut corners = Vec::with_capacity(self.outline.corners.len() + 1);
-        let Some(first) = directions.next() else {
-            return corners;
-        };
-        let east = (first.longitude() - Angle::from_degrees(self.map.row.longitude)).signed();
-        corners.push(Corner {
-            east: east.degrees(),
-            latitude: first.latitude().degrees(),
-        });
-        let mut last = first;
-        for next in directions {
-            walk(&mut corners, last, next, 10);
-            last = next;
-        }
-        corners
-    }
-
     /// What lies below the skyline, and its edge.
     fn silhouette(&mut self) {
         const FAR_DEGREES: f64 = 100.0;
         let frame = self.map.row.frame;
-        let corners = self.corners();
-        let [first, .., last] = corners[..] else {
-            return;
-        };
+        let corners = self.corners;
+        let [first, .., last] = *corners else { return };
+        let middle = Angle::from_degrees(self.map.row.longitude);
+        // Degrees by which the walk is counted from elsewhere than this row's middle.
+        let away = (Angle::from_degrees(first.longitude) - middle)
+            .signed()
+            .degrees()
+            - first.longitude;
         // Once round the pole of the ecliptic that is under ground, or round neither or both.
-        let turns = ((last.east - first.east) / 360.0).round();
+        let turns = ((last.longitude - first.longitude) / 360.0).round();
         let copies: Vec<Vec<Point>> = [-1.0, 0.0, 1.0]
             .map(|copy| {
-                let shift = copy * if turns < 0.0 { -360.0 } else { 360.0 };
+                let shift = away + copy * if turns < 0.0 { -360.0 } else { 360.0 };
                 corners
                     .iter()
-                    .map(|corner| self.map.unrolled(corner.east + shift, corner.latitude))
+                    .map(|corner| self.map.unrolled(corner.longitude + shift, corner.latitude))
                     .collect()
             })
             .to_vec();
@@ -493,8 +553,7 @@ impl RowPainter<'_> {
         } else {
             let mut ring: Vec<Point> = copies.concat();
             if let [begin, .., end] = ring[..] {
-                let away = self.map.north;
-                let down = |point: Point| point.towards(away, -2.0 * FAR_DEGREES);
+                let down = |point: Point| point.towards(self.map.north, -2.0 * FAR_DEGREES);
                 ring.extend([down(end), down(begin)]);
             }
             vec![ring]
@@ -598,8 +657,8 @@ impl RowPainter<'_> {
             let age = |part: f64| older + (newer - older) * part;
             let point = |part: f64| RibbonPoint {
                 at: from.between(to, part),
-                width: 13.0 - 9.0 * age(part),
-                paint: Paint::of(Role::Selection).faded(0.42 * (1.0 - age(0.5))),
+                width: 11.0 - 8.0 * age(part),
+                paint: Paint::of(Role::Selection).faded(0.4 * (1.0 - age(0.5))),
                 index: 0,
             };
             self.scene.add(
@@ -649,17 +708,20 @@ impl RowPainter<'_> {
             dash: behind.then_some((2.6, 2.0)),
             ..Stroke::of(Role::Ink, 1.7)
         };
-        self.add(id, ring(8.0, Stroke::of(Role::Plate, 4.2)));
-        self.add(id, ring(8.0, ink));
-        self.add(id, dot(3.4, Role::Plate));
-        self.add(id, dot(2.3, Role::Ink));
+        self.add(id, ring(7.0, Stroke::of(Role::Plate, 3.6)));
+        self.add(id, ring(7.0, ink));
+        self.add(id, dot(3.2, Role::Plate));
+        self.add(id, dot(2.2, Role::Ink));
         self.taken.push(Rect::around(at, 22.0, 22.0));
     }
 
     fn other_mark(&mut self, readings: &Readings, at: Point) {
         let id = MarkId::Moment(readings.body);
         let (radius, fill, edge) = match readings.body {
-            Body::Sun => (6.0, Role::Caution, Role::Ink),
+            Body::Sun if self.moment.sky.twilight == Twilight::Day => {
+                (6.0, Role::Caution, Role::Ink)
+            }
+            Body::Sun => (5.0, Role::Sun, Role::Plate),
             Body::Moon => (5.0, Role::Moonlight, Role::FaintInk),
             _ => (3.6, Role::Companion, Role::Plate),
         };
@@ -681,6 +743,10 @@ impl RowPainter<'_> {
         );
         self.taken
             .push(Rect::around(at, 2.0 * radius, 2.0 * radius));
+        // Companions have their names on the strip.
+        if !matches!(readings.body, Body::Sun | Body::Moon) {
+            return;
+        }
         let size = 8.4 * self.style.text_scale;
         let mut label = Label::new(
             at.moved(radius + 3.5, 0.35 * size),
@@ -709,96 +775,79 @@ impl RowPainter<'_> {
         self.taken.iter().all(|other| !other.overlaps(&roomy))
     }
 
-    /// Whether a box lies within the silhouette.
+    /// Whether a box lies within the silhouette: looked at all along its upper, middle and lower line, since roofs are small.
     fn is_under(&self, bounds: &Rect) -> bool {
-        let frame = self.map.row.frame.grown(-1.5);
-        frame.holds(bounds)
-            && bounds
-                .corners()
-                .into_iter()
-                .chain([bounds.centre()])
-                .all(|point| self.outline.covers(self.map.local_at(point)))
+        const APART: f64 = 7.0;
+        if !self.map.row.frame.grown(-1.5).holds(bounds) {
+            return false;
+        }
+        let bounds = bounds.grown(1.5);
+        let steps = (bounds.width() / APART).ceil().max(1.0);
+        let mut step = 0.0;
+        while step <= steps {
+            let x = bounds.left + bounds.width() * step / steps;
+            let middle = bounds.centre().y;
+            for y in [bounds.top, middle, bounds.bottom] {
+                if !self.outline.covers(self.map.local_at(Point::new(x, y))) {
+                    return false;
+                }
+            }
+            step += 1.0;
+        }
+        true
     }
 
-    /// The edge at an azimuth on the row and the way down into the silhouette; `None` outside the row.
-    fn edge_at(&self, azimuth: Angle) -> Option<(Point, Point)> {
-        let edge = self.outline.edge(azimuth, Angle::ZERO);
+    /// A place on the edge on the row and the way down into the silhouette; `None` outside the row.
+    fn edge_at(&self, edge: Vec3, below: Vec3) -> Option<(Point, Point)> {
         let at = self.map.point_of_local(edge);
         if !self.map.row.frame.contains(at) {
             return None;
         }
-        let below = self.outline.edge(azimuth, Angle::from_degrees(0.5));
         let down = self.map.point_of_local(below).minus(at).unit();
         (down.length() > 0.0).then_some((at, down))
     }
 
     /// Ticks and names of the horizon's points, set into the silhouette as on a panorama board.
     fn compass(&mut self) {
-        const POINTS: [&str; 16] = [
-            "N", "NNE", "NE", "ENE", "E", "ESE", "SE", "SSE", "S", "SSW", "SW", "WSW", "W", "WNW",
-            "NW", "NNW",
-        ];
         let scale = self.map.row.scale;
-        let text = self.style.text_scale;
-        for (index, name) in (0_u32..).zip(POINTS) {
-            let azimuth = Angle::from_degrees(22.5 * f64::from(index));
-            let is_main = index % 2 == 0;
-            if !is_main && scale < 4.0 {
-                continue;
-            }
-            let font = if is_main {
-                Font::SansStrong
-            } else {
-                Font::Sans
+        let size = self.style.text_scale;
+        let outline = self.outline;
+        for point in &outline.compass {
+            let (words, font, size, role, tick) = match &point.kind {
+                CompassKind::Main(name) => (*name, Font::SansStrong, 8.6 * size, Role::Ink, 6.0),
+                CompassKind::Between(name) if scale >= 4.0 => {
+                    (*name, Font::Sans, 8.6 * size, Role::Ink, 6.0)
+                }
+                CompassKind::Degrees(degrees) if scale >= 9.0 => (
+                    degrees.as_str(),
+                    Font::Sans,
+                    7.0 * size,
+                    Role::FaintInk,
+                    4.5,
+                ),
+                CompassKind::Tick if scale >= 9.0 => ("", Font::Sans, 0.0, Role::FaintInk, 2.8),
+                _ => continue,
             };
-            self.point_of_compass(azimuth, name.to_owned(), font, 8.6 * text, Role::Ink, 6.0);
-        }
-        if scale < 9.0 {
-            return;
-        }
-        for degree in (0_u32..360).step_by(5) {
-            let azimuth = Angle::from_degrees(f64::from(degree));
-            if degree % 10 == 0 && degree % 45 != 0 {
-                let words = format!("{degree}°");
-                self.point_of_compass(azimuth, words, Font::Sans, 7.0 * text, Role::FaintInk, 4.5);
-            } else {
-                self.tick(azimuth, 2.8);
+            let Some((at, down)) = self.edge_at(point.edge, point.below) else {
+                continue;
+            };
+            if !words.is_empty() {
+                let label = Label::new(at, words, font, size, role).aligned(Align::Middle);
+                let Some(label) = self.set_into(label, down, &[tick + 2.5, tick + 6.0]) else {
+                    continue;
+                };
+                self.taken.push(label.bounds());
+                self.add(MarkId::Skyline, Shape::Label(label));
             }
-        }
-    }
-
-    fn tick(&mut self, azimuth: Angle, length: f64) {
-        if let Some((at, down)) = self.edge_at(azimuth) {
             self.scene.add(
                 MarkId::Skyline,
                 Layer::Skyline,
                 Shape::Line {
-                    points: vec![at, at.towards(down, length)],
+                    points: vec![at, at.towards(down, tick)],
                     stroke: Stroke::of(Role::FaintInk, 0.8),
                 },
             );
         }
-    }
-
-    fn point_of_compass(
-        &mut self,
-        azimuth: Angle,
-        words: String,
-        font: Font,
-        size: f64,
-        role: Role,
-        tick: f64,
-    ) {
-        let Some((at, down)) = self.edge_at(azimuth) else {
-            return;
-        };
-        let label = Label::new(at, words, font, size, role).aligned(Align::Middle);
-        let Some(label) = self.set_into(label, down, &[tick + 2.5, tick + 6.0]) else {
-            return;
-        };
-        self.tick(azimuth, tick);
-        self.taken.push(label.bounds());
-        self.add(MarkId::Skyline, Shape::Label(label));
     }
 
     /// The label moved from its anchor on the edge down into the silhouette, to the first depth at which it is free.
@@ -816,7 +865,7 @@ impl RowPainter<'_> {
                 ..label.clone()
             };
             let bounds = moved.bounds();
-            (self.is_under(&bounds) && self.is_free(&bounds)).then_some(moved)
+            (self.is_free(&bounds) && self.is_under(&bounds)).then_some(moved)
         })
     }
 
@@ -828,7 +877,9 @@ impl RowPainter<'_> {
             let shares = [0.5, 0.35, 0.65, 0.2, 0.8, 0.05, 0.95];
             let found = shares.into_iter().find_map(|share| {
                 let azimuth = part.from + (part.to - part.from) * share;
-                let (at, down) = self.edge_at(azimuth)?;
+                let edge = outline.edge(azimuth, Angle::ZERO);
+                let (at, down) =
+                    self.edge_at(edge, outline.edge(azimuth, Angle::from_degrees(0.5)))?;
                 let label = Label::new(at, part.name.clone(), Font::SerifItalic, size, Role::Ink)
                     .aligned(Align::Middle);
                 self.set_into(label, down, &[14.0, 20.0, 28.0, 38.0])
@@ -846,7 +897,9 @@ fn walk(corners: &mut Vec<Corner>, from: Vec3, to: Vec3, depth: u32) {
     let Some(last) = corners.last().copied() else {
         return;
     };
-    let step = (to.longitude() - from.longitude()).signed().degrees();
+    let step = (to.longitude() - Angle::from_degrees(last.longitude))
+        .signed()
+        .degrees();
     if step.abs() > LONGEST_STEP_DEGREES && depth > 0 {
         let middle = (from + to).unit();
         walk(corners, from, middle, depth - 1);
@@ -854,7 +907,7 @@ fn walk(corners: &mut Vec<Corner>, from: Vec3, to: Vec3, depth: u32) {
         return;
     }
     corners.push(Corner {
-        east: last.east + step,
+        longitude: last.longitude + step,
         latitude: to.latitude().degrees(),
     });
 }

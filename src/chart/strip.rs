@@ -912,7 +912,7 @@ impl RowPainter<'_> {
 
     /// Names of the bright stars, small, out of the way.
     fn star_names(&mut self, mut named: Vec<Named>) {
-        let faintest = if self.row.scale > 12.0 { 3.9 } else { 2.6 };
+        let faintest = if self.row.scale > 12.0 { 3.6 } else { 2.6 };
         named.retain(|star| star.magnitude <= faintest);
         named.sort_by(|a, b| a.magnitude.total_cmp(&b.magnitude));
         for star in named.into_iter().take(16) {

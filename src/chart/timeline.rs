@@ -109,7 +109,7 @@ impl TimelineLayout {
             _ => (0.0, count),
         };
         let scale = view.scale();
-        let top = if view.is_tall() { 38.0 } else { 26.0 } * scale;
+        let top = if view.is_tall() { 39.0 } else { 26.0 } * scale;
         let bottom = if view.has_caption(text) { 27.0 } else { 16.0 } * scale;
         let (left, right) = (38.0 * scale, 8.0);
         let plot = Rect::new(
@@ -476,9 +476,9 @@ impl Painter<'_> {
         );
     }
 
-    /// From day through dusk to night, a thin step of tone for every degree of the Sun's depth.
+    /// From day through dusk to night, in steps of tone too fine to be seen.
     fn dusk(&mut self) {
-        const STEPS: u32 = 18;
+        const STEPS: u32 = 40;
         for step in 0..=STEPS {
             let depth = f64::from(step) / f64::from(STEPS);
             // Ground at sunset, dusk at its brightest with the end of civil twilight, then night.
@@ -530,46 +530,64 @@ impl Painter<'_> {
                 night.map_or(0.0, |night| night.moon_lit)
             };
             // A half Moon gives a tenth of a full one's light; the eye makes a third of that.
-            let strength = |lit: f64| 0.62 * libm::pow(lit.clamp(0.0, 1.0), 1.6);
+            let strength = |lit: f64| 0.52 * libm::pow(lit.clamp(0.0, 1.0), 1.6);
             let paint = |lit| Paint::of(Role::Moonlight).faded(strength(lit));
-            let (mut left, mut right) = (f64::INFINITY, f64::NEG_INFINITY);
-            for point in &polygon {
-                left = left.min(point.x);
-                right = right.max(point.x);
-            }
-            if right - left < 0.01 {
-                continue;
-            }
-            let mut stops = Vec::new();
-            for offset in 0..chain.hours.len() {
-                let x = self.layout.x((chain.first + offset) as f64 + 0.5);
-                let part = (x - left) / (right - left);
-                if (0.0..=1.0).contains(&part) {
-                    stops.push(Stop {
-                        part,
-                        paint: paint(lit(offset)),
-                    });
-                }
-            }
-            let [mut first, .., mut last] = stops[..] else {
-                continue;
-            };
-            (first.part, last.part) = (0.0, 1.0);
-            stops.insert(0, first);
-            stops.push(last);
-            self.scene.add(
-                MarkId::Sheet,
-                Layer::Shade,
-                Shape::Shade {
-                    polygon,
-                    run: Run::Along {
-                        from: Point::new(left, 0.0),
-                        to: Point::new(right, 0.0),
-                    },
-                    stops,
-                },
-            );
+            self.shaded(chain, polygon, Layer::Shade, |offset| paint(lit(offset)));
         }
+    }
+
+    /// A chain filled with a paint for each of its nights, even between them.
+    fn shaded(
+        &mut self,
+        chain: &Chain,
+        polygon: Vec<Point>,
+        layer: Layer,
+        paint: impl Fn(usize) -> Paint,
+    ) {
+        let (mut left, mut right) = (f64::INFINITY, f64::NEG_INFINITY);
+        for point in &polygon {
+            left = left.min(point.x);
+            right = right.max(point.x);
+        }
+        if right - left < 0.01 {
+            return;
+        }
+        let mut stops: Vec<Stop> = Vec::new();
+        for offset in 0..chain.hours.len() {
+            let x = self.layout.x((chain.first + offset) as f64 + 0.5);
+            let part = (x - left) / (right - left);
+            if !(0.0..=1.0).contains(&part) {
+                continue;
+            }
+            let stop = Stop {
+                part,
+                paint: paint(offset),
+            };
+            // Where a paint lasts, its first and last night are enough.
+            match stops.as_mut_slice() {
+                [.., before, last] if before.paint == last.paint && last.paint == stop.paint => {
+                    last.part = part;
+                }
+                _ => stops.push(stop),
+            }
+        }
+        let (Some(&first), Some(&last)) = (stops.first(), stops.last()) else {
+            return;
+        };
+        stops.insert(0, Stop { part: 0.0, ..first });
+        stops.push(Stop { part: 1.0, ..last });
+        self.scene.add(
+            MarkId::Sheet,
+            layer,
+            Shape::Shade {
+                polygon,
+                run: Run::Along {
+                    from: Point::new(left, 0.0),
+                    to: Point::new(right, 0.0),
+                },
+                stops,
+            },
+        );
     }
 
     /// Hours of the clock across the nights, stepping where clocks change, with their names at the left.
@@ -662,28 +680,25 @@ impl Painter<'_> {
         };
         let fields = chains(self.shown().map(|(index, night)| (index, in_view(night))));
         let width = (layout.night_width() * 0.3).clamp(0.3, 1.25);
-        // Where threads run into each other the field alone speaks.
-        let field = if layout.night_width() < 1.5 {
-            0.55
-        } else {
-            0.2
-        };
+        // Where threads would run into each other the field alone speaks.
+        let is_fine = layout.night_width() < 2.0;
+        let field = if is_fine { 0.75 } else { 0.2 };
         for chain in &fields {
-            let ring = self.outline(chain);
-            let middle = chain.first + chain.hours.len() / 2;
-            let Some(night) = self.darkness.nights.get(middle) else {
-                continue;
-            };
-            let fill = self.subject_paint(night.span.middle()).faded(field);
-            self.scene.add(
-                MarkId::Sheet,
-                Layer::OtherPaths,
-                Shape::Area {
-                    rings: vec![ring],
-                    fill,
-                    edge: None,
-                },
-            );
+            let paints: Vec<Paint> = (0..chain.hours.len())
+                .map(|offset| {
+                    let night = self.darkness.nights.get(chain.first + offset);
+                    let instant = night.map_or(self.season.span.from, |night| night.span.middle());
+                    self.subject_paint(instant).faded(field)
+                })
+                .collect();
+            let Some(&last) = paints.last() else { continue };
+            let polygon = self.outline(chain);
+            self.shaded(chain, polygon, Layer::OtherPaths, |offset| {
+                paints.get(offset).copied().unwrap_or(last)
+            });
+        }
+        if is_fine {
+            return;
         }
         let plot = layout.plot;
         let mut threads = Vec::new();
@@ -791,7 +806,7 @@ impl Painter<'_> {
             .collect();
         events.sort_by_key(|&(index, weight)| (weight, index));
         let size = 8.2 * self.scale;
-        let rows: &[f64] = if is_tall { &[1.0, 2.15] } else { &[1.0] };
+        let rows: &[f64] = if is_tall { &[1.0, 2.3] } else { &[1.0] };
         let mut taken: Vec<Rect> = Vec::new();
         let mut marked: Vec<f64> = Vec::new();
         for (index, _) in events {

@@ -60,7 +60,9 @@ fn hour_line(hour: f64) -> HourLine {
 }
 
 fn degrees(angle: Angle) -> String {
-    format!("{}°", angle.degrees()).replace('-', "\u{2212}")
+    // To a tenth, without a decimal that says nothing.
+    let tenths = (angle.degrees() * 10.0).round() / 10.0;
+    format!("{tenths}°").replace('-', "\u{2212}")
 }
 
 fn caption(plan: &Plan) -> String {

@@ -647,7 +647,11 @@ fn compass(east_left: bool) -> Entry {
     let mut scene = Scene::default();
     let (arm, tip) = (15.0, 3.0);
     // Half a turn for the southern sky: east to the right, north down.
-    let foot = if east_left { Point::new(26.0, SECOND_Y - 1.5) } else { Point::new(12.0, SECOND_Y - 13.5) };
+    let foot = if east_left {
+        Point::new(26.0, SECOND_Y - 1.5)
+    } else {
+        Point::new(12.0, SECOND_Y - 13.5)
+    };
     let side = if east_left { -1.0 } else { 1.0 };
     let stroke = Stroke::of(Role::FaintInk, 0.8);
     let north = foot.moved(0.0, side * arm);
@@ -683,7 +687,11 @@ fn compass(east_left: bool) -> Entry {
     write(
         &mut scene,
         MarkId::Sheet,
-        caption(north.moved(0.0, if east_left { -4.5 } else { 9.5 }), "north").aligned(Align::Middle),
+        caption(
+            north.moved(0.0, if east_left { -4.5 } else { 9.5 }),
+            "north",
+        )
+        .aligned(Align::Middle),
     );
     let label = caption(east.moved(side * 4.5, 2.6), "east").aligned(if east_left {
         Align::End
