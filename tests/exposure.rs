@@ -294,6 +294,13 @@ fn own_motion_of_venus() {
             .to_string()
             .contains("days")
     );
+    let nothing = Vec3::new(f64::NAN, 0.0, 0.0);
+    assert!(
+        AngularRate::of_motion(first, nothing, 1.0)
+            .unwrap_err()
+            .to_string()
+            .contains("angle")
+    );
     assert!(AngularRate::of_motion(first, second, f64::NAN).is_err());
 }
 

@@ -625,6 +625,12 @@ fn closest_dots_are_found_across_the_loop() {
     close(closest.pixels(&dots, &frame).unwrap(), 5.0 / 6.188, 0.001);
     assert_eq!(closest_dots(&dots[..1]), None);
     assert_eq!(closest_dots(&[]), None);
+    let with_a_gap = [Vec3::new(f64::NAN, 0.0, 0.0), dots[0], dots[1]];
+    assert_eq!(
+        closest_dots(&with_a_gap).map(|pair| (pair.first, pair.second)),
+        Some((1, 2))
+    );
+    assert_eq!(frame.part_held(&with_a_gap).fraction, 1.0);
     // Daily dots of the season crowd at a station: 2027 January 10 is day 70, April 1 day 151.
     let mars = closest_dots(&mars_2026()).unwrap();
     assert!(
@@ -701,6 +707,8 @@ fn what_cannot_be_framed_is_refused_with_what_would_work() {
             Err(FrameError::NotADirection { index: 1 })
         );
         assert!(PhotoFrame::new(bad, Angle::ZERO, &lens, &sensor).is_err());
+        let run = longest_run(&directions, &some, margin, &lens, &sensor);
+        assert_eq!(run, Err(FrameError::NotADirection { index: 1 }));
     }
     for wide in [
         vec![place(0.0, 0.0), place(180.0, 0.0)],

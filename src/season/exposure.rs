@@ -49,7 +49,7 @@ impl AngularRate {
     /// A body's own motion among the stars, from its directions at two instants; the mean rate along the great circle.
     ///
     /// # Errors
-    /// Less than a second or more than ten days between them.
+    /// Less than a second or more than ten days between them; vectors that are no directions.
     pub fn of_motion(first: Vec3, second: Vec3, days: f64) -> Result<Self, OutOfRange> {
         let days = within(
             "time between the directions",
@@ -57,8 +57,14 @@ impl AngularRate {
             (1.0 / SECONDS_PER_DAY, 10.0),
             "days (an hour or a day will do)",
         )?;
+        let degrees = within(
+            "angle between the directions",
+            first.separation(second).degrees(),
+            (0.0, 180.0),
+            "degrees",
+        )?;
         Ok(AngularRate {
-            per_second: first.separation(second) / (days * SECONDS_PER_DAY),
+            per_second: Angle::from_degrees(degrees / (days * SECONDS_PER_DAY)),
         })
     }
 

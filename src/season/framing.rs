@@ -60,14 +60,7 @@ impl Subject {
             (0.0, GREATEST_MARGIN_DEG),
             "degrees at the middle of the picture",
         )?;
-        let mut units = Vec::with_capacity(directions.len());
-        for (index, direction) in directions.iter().enumerate() {
-            let norm = direction.norm();
-            if !(norm.is_finite() && norm > 0.0) {
-                return Err(FrameError::NotADirection { index });
-            }
-            units.push(direction.unit());
-        }
+        let units = checked_units(directions)?;
         let middle = middle_of_cap(&units)?;
         let reach = units
             .iter()
@@ -89,6 +82,20 @@ impl Subject {
             start,
         })
     }
+}
+
+/// # Errors
+/// The first that has no length or a length that is no number.
+fn checked_units(directions: &[Vec3]) -> Result<Vec<Vec3>, FrameError> {
+    let checked = |(index, direction): (usize, &Vec3)| {
+        let norm = direction.norm();
+        if norm.is_finite() && norm > 0.0 {
+            Ok(direction.unit())
+        } else {
+            Err(FrameError::NotADirection { index })
+        }
+    };
+    directions.iter().enumerate().map(checked).collect()
 }
 
 fn too_wide(reach: f64) -> FrameError {
@@ -620,10 +627,7 @@ impl PhotoFrame {
         lens: &Lens,
         sensor: &Sensor,
     ) -> Result<Self, FrameError> {
-        let norm = centre.norm();
-        if !(norm.is_finite() && norm > 0.0) {
-            return Err(FrameError::NotADirection { index: 0 });
-        }
+        checked_units(&[centre])?;
         within(
             "tilt",
             tilt.degrees(),
@@ -683,14 +687,19 @@ impl PhotoFrame {
         self.rectangle.holds(direction)
     }
 
-    /// The part of a path that lies in the picture; neighbouring points are joined by great circles.
+    /// The part of a path that lies in the picture; neighbouring points are joined by great circles. A step from or to what
+    /// is no direction counts for nothing.
     #[must_use]
     pub fn part_held(&self, path: &[Vec3]) -> PartHeld {
         let mut stretches: Vec<Stretch> = Vec::new();
         let (mut held, mut all) = (0.0, 0.0);
         for (index, (a, b)) in path.iter().zip(path.iter().skip(1)).enumerate() {
             let (a, b) = (a.unit(), b.unit());
-            all += a.separation(b).radians();
+            let step = a.separation(b).radians();
+            if !step.is_finite() {
+                continue;
+            }
+            all += step;
             let Some((from, to)) = self.rectangle.clip(a, b) else {
                 continue;
             };
@@ -762,6 +771,8 @@ pub fn longest_run(
     if path.is_empty() {
         return Err(FrameError::NoDirections);
     }
+    let path = &checked_units(path)?;
+    let also = &checked_units(also)?;
     let mut wanted: Vec<Vec3> = Vec::with_capacity(path.len() + also.len());
     let mut framed = |run: &[Vec3]| -> Result<Option<PhotoFrame>, FrameError> {
         wanted.clear();
@@ -1122,7 +1133,7 @@ impl ClosestDots {
 }
 
 /// The closest pair among the dots, neighbours in time or not: they crowd at stations and where a loop crosses itself.
-/// `None` for fewer than two.
+/// What is no direction is passed over; `None` for fewer than two.
 #[must_use]
 pub fn closest_dots(dots: &[Vec3]) -> Option<ClosestDots> {
     let mut least: Option<(f64, usize, usize)> = None;
@@ -1130,7 +1141,7 @@ pub fn closest_dots(dots: &[Vec3]) -> Option<ClosestDots> {
         for (second, b) in dots.iter().enumerate().skip(first + 1) {
             let away = a.unit() - b.unit();
             let distance = away.dot(away);
-            if least.is_none_or(|(least, ..)| distance < least) {
+            if distance.is_finite() && least.is_none_or(|(least, ..)| distance < least) {
                 least = Some((distance, first, second));
             }
         }
