@@ -6,7 +6,8 @@
 //! altitudes of the Sun true, of its centre.
 //!
 //! "In view" is a plain test of altitude, skyline and the Sun's depth by [`Conditions`]; hours, weekdays and Moon do not
-//! enter, and an opening shorter than ten minutes may be missed. Stretches from an exact search can take its place
+//! enter, and what lasts less than two minutes, an opening or a chimney
+//! in it, may be missed. Stretches from an exact search can take its place
 //! ([`Darkness::set_in_view`]).
 
 use super::conditions::Conditions;
@@ -20,6 +21,8 @@ use crate::sky::{Angle, Body, Site, Skyline, Tt, Vec3};
 
 /// Samples of a night, one every ten minutes, both ends included.
 const SAMPLES: usize = 145;
+/// Parts of the time between samples in which the skyline is looked at: 2 minutes, in which the sky turns by half a degree.
+const FINER: usize = 5;
 /// Questions to the ephemeris in a night, both ends included.
 const NODES: usize = 5;
 /// Where a stretch begins and ends is found to this, days.
@@ -282,10 +285,18 @@ impl NightTrack {
             moon.sample(share, instant.moon_over(), |share| {
                 self.at(share).moon_over()
             });
-            let over = instant.in_view_by(place, cursor);
-            view.sample(share, over, |share| {
-                self.at(share).in_view_by(place, cursor)
-            });
+            // Chimneys are narrow: a finer look wherever it could be dark with the subject up.
+            let steps = if instant.may_be_in_view() { FINER } else { 1 };
+            for step in 0..steps {
+                let share = (sample as f64 + step as f64 / steps as f64) / (SAMPLES - 1) as f64;
+                if share > 1.0 {
+                    break;
+                }
+                let over = self.at(share).in_view_by(place, cursor);
+                view.sample(share, over, |share| {
+                    self.at(share).in_view_by(place, cursor)
+                });
+            }
         }
         let [_, _, middle, ..] = self.nodes;
         let spans = |stretches: Stretches| {
@@ -339,21 +350,35 @@ impl Instant<'_> {
         altitude(local) + semidiameter - MOON_LIMB.radians()
     }
 
-    /// Least margin of the conditions, radians; not negative when the subject is in view.
+    /// Whether the subject is up, or nearly, and the Sun low, or nearly, so that a closer look is worth its cost.
+    fn may_be_in_view(&self) -> bool {
+        self.sun_altitude() < 0.05 && altitude(self.local(|node| node.subject)) > -0.15
+    }
+
+    /// Not negative when the subject is in view; radians, but only the sign is meant.
     fn in_view_by(&self, place: Place<'_>, cursor: &mut Cursor<'_>) -> f64 {
+        /// More than refraction ever lifts.
+        const MOST_LIFT: f64 = 0.02;
         let conditions = place.conditions;
         let dark = conditions.sun_below.radians() - self.sun_altitude();
+        if dark < 0.0 {
+            return dark;
+        }
         let local = self.local(|node| node.subject);
         let true_altitude = altitude(local);
-        // Far below, or in daylight, the rest need not be known.
-        if true_altitude < -0.2 || dark < -0.2 {
-            return dark.min(true_altitude);
+        let over_least = true_altitude - conditions.least_altitude.radians();
+        if over_least < -MOST_LIFT {
+            return over_least;
         }
-        let apparent = apparent_from_true(Angle::from_radians(true_altitude), &place.site.air);
         let azimuth = Angle::from_radians(libm::atan2(local.x, local.y));
         let skyline = cursor.altitude_at(azimuth) + conditions.clearance;
         let least = skyline.radians().max(conditions.least_altitude.radians());
-        dark.min(apparent.radians() - least)
+        let over = true_altitude - least;
+        if !(-MOST_LIFT..0.0).contains(&over) {
+            return over;
+        }
+        let apparent = apparent_from_true(Angle::from_radians(true_altitude), &place.site.air);
+        apparent.radians() - least
     }
 }
 
