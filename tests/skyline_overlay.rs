@@ -263,7 +263,7 @@ fn overlay(plan: &Plan, instant: Tt) -> (Scene, Scene) {
 
 /// Rising over the ridge in the evening of 12 February 2027 (18:30 CET).
 fn over_the_ridge() -> Tt {
-    Tt::from_julian_date(2_461_449.2292 + 0.0008)
+    Tt::from_julian_date(2_461_449.229_2 + 0.000_8)
 }
 
 #[test]

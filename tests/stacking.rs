@@ -1,6 +1,5 @@
 //! Stacked pictures: pixels of both kinds, and the instants of the rules against tables and closed forms.
 
-#[allow(dead_code)] // It serves other tests, too.
 mod common;
 
 use std::convert::Infallible;

@@ -358,7 +358,7 @@ impl SiteTracks {
     }
 
     /// Instant of the first sample.
-    pub(super) fn from_days(&self) -> f64 {
+    pub(super) fn first_day(&self) -> f64 {
         self.from
     }
 
