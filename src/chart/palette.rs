@@ -166,7 +166,7 @@ impl Palette {
             (Role::SubjectLate, 0xFB_EECB),
             (Role::Retrograde, 0xFA_6E4C),
             (Role::Companion, 0x6F_ADC4),
-            (Role::Sun, 0xC9_C2B4),
+            (Role::Sun, 0x94_8F84),
             (Role::Star, 0xE9_E4D6),
             (Role::StarWarm, 0xFF_C38A),
             (Role::StarCool, 0xA9_CBFF),

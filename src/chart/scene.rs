@@ -6,6 +6,7 @@
 use std::fmt;
 
 use crate::sky::Body;
+use crate::sky::constellations::Constellation;
 
 use super::geometry::{self, Point, Rect};
 use super::palette::{Palette, Rgb, Role};
@@ -20,8 +21,8 @@ pub enum MarkId {
     Scale,
     /// IAU boundary, by its place in the list handed in.
     Boundary(usize),
-    /// Name of a constellation, by its place in the order of drawing.
-    Constellation(usize),
+    /// The name of a constellation.
+    Constellation(Constellation),
     /// A star by its number in the Hipparcos catalogue.
     Star(u32),
     /// The whole path of a body; a hit on it becomes a `TrackPoint`.
@@ -367,20 +368,40 @@ impl Scene {
     }
 
     /// What lies within `tolerance` points of a place: nearest first, and of equally near ones the one drawn last.
-    /// Each id once. Sheet, scale and boundaries are never found.
+    /// Each id once, and of a body's path the one sample whose place is nearest. Sheet, scale and boundaries are never
+    /// found.
     #[must_use]
     pub fn hit(&self, point: Point, tolerance: f64) -> Vec<Hit> {
         let mut found: Vec<Hit> = Vec::new();
+        // Per body: place in `found`, distance from the middle of the path.
+        let mut paths: Vec<(Body, usize, f64)> = Vec::new();
         for mark in self.marks.iter().rev() {
             if matches!(mark.id, MarkId::Sheet | MarkId::Scale | MarkId::Boundary(_)) {
                 continue;
             }
-            let (distance, index) = mark.shape.distance(point);
+            let (distance, sample) = mark.shape.distance(point);
             if distance > tolerance || !distance.is_finite() {
                 continue;
             }
-            let id = match (mark.id, index) {
-                (MarkId::Track(body), Some(index)) => MarkId::TrackPoint { body, index },
+            let id = match (mark.id, sample) {
+                (MarkId::Track(body), Some((index, off))) => {
+                    let id = MarkId::TrackPoint { body, index };
+                    match paths.iter_mut().find(|path| path.0 == body) {
+                        Some(path) => {
+                            if let Some(hit) = found.get_mut(path.1) {
+                                hit.distance = hit.distance.min(distance);
+                                if off < path.2 {
+                                    (hit.id, path.2) = (id, off);
+                                }
+                            }
+                        }
+                        None => {
+                            paths.push((body, found.len(), off));
+                            found.push(Hit { id, distance });
+                        }
+                    }
+                    continue;
+                }
                 (id, _) => id,
             };
             match found.iter_mut().find(|hit| hit.id == id) {
@@ -394,8 +415,8 @@ impl Scene {
 }
 
 impl Shape {
-    /// Distance from a point (0 inside), and the sample nearest to it where the shape is a ribbon.
-    fn distance(&self, point: Point) -> (f64, Option<usize>) {
+    /// Distance from a point (0 inside); of a ribbon also the sample nearest to it and how far its middle is.
+    fn distance(&self, point: Point) -> (f64, Option<(usize, f64)>) {
         let along = |points: &[Point]| {
             points.windows(2).fold(f64::INFINITY, |least, pair| {
                 least.min(geometry::distance_to_segment(point, pair[0], pair[1]).0)
@@ -404,14 +425,15 @@ impl Shape {
         match self {
             Shape::Line { points, stroke } => ((along(points) - stroke.width / 2.0).max(0.0), None),
             Shape::Ribbon(points) => {
-                let mut best = (f64::INFINITY, None);
+                let mut best: (f64, Option<(usize, f64)>) = (f64::INFINITY, None);
                 for pair in points.windows(2) {
                     let &[from, to] = pair else { continue };
                     let (apart, part) = geometry::distance_to_segment(point, from.at, to.at);
                     let width = from.width + (to.width - from.width) * part;
-                    let apart = (apart - width / 2.0).max(0.0);
-                    if apart < best.0 {
-                        best = (apart, Some(if part < 0.5 { from.index } else { to.index }));
+                    let index = if part < 0.5 { from.index } else { to.index };
+                    best.0 = best.0.min((apart - width / 2.0).max(0.0));
+                    if best.1.is_none_or(|(_, off)| apart < off) {
+                        best.1 = Some((index, apart));
                     }
                 }
                 best

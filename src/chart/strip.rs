@@ -49,6 +49,19 @@ impl StripView {
         furniture: true,
     };
 
+    /// Width and height, within what can be drawn: 120 to 20 000 points.
+    #[must_use]
+    pub fn size(&self) -> (f64, f64) {
+        let sound = |length: f64| {
+            if length.is_finite() {
+                length.clamp(120.0, 20_000.0)
+            } else {
+                120.0
+            }
+        };
+        (sound(self.width), sound(self.height))
+    }
+
     /// The layout that [`strip`] uses for this view.
     #[must_use]
     pub fn layout(&self, season: &Season, text: &StripText) -> StripLayout {
@@ -109,9 +122,10 @@ pub struct StripText {
 #[must_use]
 pub fn strip(season: &Season, stars: &[Star], text: &StripText, view: &StripView) -> Scene {
     let layout = view.layout(season, text);
+    let (width, height) = view.size();
     let mut scene = Scene {
-        width: view.width,
-        height: view.height,
+        width,
+        height,
         title: text.title.clone(),
         description: furniture::description(season, text),
         marks: Vec::new(),
@@ -175,13 +189,12 @@ pub fn strip(season: &Season, stars: &[Star], text: &StripText, view: &StripView
 struct Drawn {
     glyphs: Vec<Glyph>,
     retrograde: bool,
-    constellations: usize,
 }
 
 /// Width of a track in points by magnitude: fixed, so that charts can be compared. A curve of our own that changes
 /// most between +2 and -3 and keeps Venus from being a bar and Neptune from being a hair.
 fn track_width(magnitude: f64) -> f64 {
-    1.5 + 5.3 / (1.0 + libm::pow(10.0, 0.3 * (magnitude + 0.8)))
+    1.5 + 5.6 / (1.0 + libm::pow(10.0, 0.32 * (magnitude + 0.7)))
 }
 
 /// The line of the Sun and of companions, points.
@@ -708,14 +721,27 @@ impl RowPainter<'_> {
                 role,
             )
         };
+        // A little apart from the names of stars, which look alike.
+        const APART: f64 = 5.0;
+        let (width, height) = size(&label);
         let mut offers = Vec::new();
         for spot in course.samples() {
             let at = self.point(spot);
             if self.row.frame.grown(-8.0).contains(at) {
-                offers.extend(around(at, size(&label), 0.0, &[4.0, 7.0], 8, 99.0, None));
+                offers.extend(around(
+                    at,
+                    (width + 2.0 * APART, height),
+                    0.0,
+                    &[4.0, 7.0],
+                    8,
+                    99.0,
+                    None,
+                ));
             }
         }
-        if let Some(taken) = self.ground.take(offers) {
+        if let Some(mut taken) = self.ground.take(offers) {
+            taken.bounds.left += APART;
+            taken.bounds.right -= APART;
             self.label(MarkId::BodyName(course.body), label, taken, role);
         }
     }
@@ -953,9 +979,12 @@ impl RowPainter<'_> {
                 })
                 .collect();
             if let Some(taken) = self.ground.take(offers) {
-                let id = MarkId::Constellation(self.drawn.constellations);
-                self.drawn.constellations += 1;
-                self.label(id, label, taken, Role::RegionName);
+                self.label(
+                    MarkId::Constellation(constellation),
+                    label,
+                    taken,
+                    Role::RegionName,
+                );
             }
         }
     }
@@ -1020,7 +1049,7 @@ fn repainted(points: &[RibbonPoint], width: impl Fn(&RibbonPoint) -> f64) -> Vec
 
 /// The light line within a retrograde stretch.
 fn light_line(points: &[RibbonPoint]) -> Vec<RibbonPoint> {
-    repainted(points, |point| (0.30 * point.width).clamp(0.6, 2.2))
+    repainted(points, |point| (0.24 * point.width).clamp(0.6, 1.6))
 }
 
 /// Where a path passes over an earlier part of itself: first and last point of the stretches on top, in order.

@@ -29,16 +29,18 @@ const EDGE: f64 = 3.0;
 
 /// Where the sky may lie on the sheet, the numbers along its edges included.
 pub(super) fn sky_area(view: &StripView, text: &StripText) -> Rect {
-    let sheet = Rect::new(0.0, 0.0, view.width, view.height);
+    let (width, height) = view.size();
     if !view.furniture {
-        return sheet;
+        return Rect::new(0.0, 0.0, width, height);
     }
+    let top = MARGIN + TITLE_HEIGHT;
+    let below = MARGIN + KEY_HEIGHT + caution_height(width, text);
+    // On a sheet too small for all this the sky keeps a little, and the rest lies over it.
     Rect::new(
         MARGIN,
-        MARGIN + TITLE_HEIGHT,
-        (view.width - MARGIN).max(MARGIN + 60.0),
-        (view.height - MARGIN - KEY_HEIGHT - caution_height(view.width, text))
-            .max(MARGIN + TITLE_HEIGHT + 60.0),
+        top,
+        (width - MARGIN).max(MARGIN + 60.0),
+        (height - below).max(top + 60.0),
     )
 }
 

@@ -21,6 +21,8 @@ const OVERLAP_DEGREES: f64 = 4.0;
 const ROW_GAP: f64 = 27.0;
 /// Rows at most.
 const MOST_ROWS: usize = 5;
+/// A row lower than this is not worth having, points.
+const LEAST_ROW_HEIGHT: f64 = 70.0;
 /// What another row must gain in scale to be worth it.
 const ROW_GAIN: f64 = 1.15;
 /// A strip up to this length stays in one row, degrees.
@@ -127,8 +129,8 @@ impl StripLayout {
             };
             let row = StripRow {
                 frame: edge,
-                longitude: window.longitude.wrapped().degrees(),
-                latitude: window.latitude.degrees(),
+                longitude: sound(window.longitude.wrapped().degrees()),
+                latitude: sound(window.latitude.degrees()).clamp(-90.0, 90.0),
                 scale: edge.width() / across,
                 east_left: view.east_left,
                 own: (-181.0, 181.0),
@@ -137,6 +139,7 @@ impl StripLayout {
         }
         let extent = Extent::of(season);
         let plan = (1..=extent.most_rows())
+            .filter(|&rows| rows == 1 || row_height(rows, &edge) >= LEAST_ROW_HEIGHT)
             .map(|rows| Plan::new(rows, &extent, &edge))
             .reduce(|best, next| {
                 if next.scale > best.scale * ROW_GAIN {
@@ -173,6 +176,8 @@ impl StripLayout {
                 _ => 0.0,
             })
             .collect();
+        // A hair more than the frame, so that its very edge belongs to the row.
+        let end = length / 2.0 + 1e-6;
         let rows = middles
             .iter()
             .enumerate()
@@ -186,8 +191,8 @@ impl StripLayout {
                     scale: plan.scale,
                     east_left: view.east_left,
                     own: (
-                        before.map_or(-181.0, |border| border - middle),
-                        borders.get(index).map_or(181.0, |border| border - middle),
+                        before.map_or(-end, |border| border - middle),
+                        borders.get(index).map_or(end, |border| border - middle),
                     ),
                 }
             })
@@ -200,6 +205,10 @@ impl StripLayout {
     pub fn row_at(&self, point: Point) -> Option<&StripRow> {
         self.rows.iter().find(|row| row.frame.contains(point))
     }
+}
+
+fn sound(degrees: f64) -> f64 {
+    if degrees.is_finite() { degrees } else { 0.0 }
 }
 
 const EDGE_LEFT: f64 = 26.0;
@@ -287,7 +296,9 @@ pub(super) fn unrolled(track: &Track, season: &Season) -> Vec<(f64, f64)> {
             let degrees = last.map_or(longitude.degrees(), |last| {
                 last + (longitude - Angle::from_degrees(last)).signed().degrees()
             });
-            last = Some(degrees);
+            if degrees.is_finite() {
+                last = Some(degrees);
+            }
             (degrees, place.latitude().degrees())
         })
         .collect()
