@@ -10,12 +10,16 @@ use std::thread::JoinHandle;
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Kind {
     Plan,
+    /// Rise, culmination and set of the night.
+    Tonight,
     Strip,
-    Timeline,
+    /// The light of every night.
+    Nights,
 }
 
 impl Kind {
-    const COUNT: usize = 3;
+    const COUNT: usize = 4;
+    const ORDER: [Kind; Kind::COUNT] = [Kind::Plan, Kind::Tonight, Kind::Strip, Kind::Nights];
 }
 
 type Job<T> = Box<dyn FnOnce() -> T + Send>;
@@ -135,14 +139,13 @@ impl<T> Drop for Worker<T> {
 }
 
 fn work<T>(shared: &Shared<T>, done: &Sender<(Kind, T)>, wake: impl Fn()) {
-    const ORDER: [Kind; Kind::COUNT] = [Kind::Plan, Kind::Strip, Kind::Timeline];
     loop {
         let mut desk = shared.desk();
         let (kind, job) = loop {
             if desk.closed {
                 return;
             }
-            let next = ORDER
+            let next = Kind::ORDER
                 .into_iter()
                 .find_map(|kind| Some((kind, desk.waiting.get_mut(kind as usize)?.take()?)));
             match next {

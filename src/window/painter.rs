@@ -12,7 +12,7 @@ use egui::{Color32, FontId, Mesh, Pos2, Shape as EguiShape, TextFormat};
 use super::polygon::{convex, trapezoids, triangles_within};
 use super::theme::{colour, family};
 use crate::chart::{
-    Align, Label, Layer, Paint, Palette, Point, Rect, RibbonPoint, Role, Run, Scene, Shape, Stop, Stroke,
+    Align, Label, Layer, Level, Mark, Paint, Palette, Point, Rect, RibbonPoint, Role, Run, Scene, Shape, Stop, Stroke,
 };
 
 /// Where a sheet stands on screen: its upper left corner and the size of its points.
@@ -27,11 +27,13 @@ pub struct Placement {
 impl Placement {
     #[must_use]
     pub fn at(&self, point: Point) -> Pos2 {
-        let (x, y) = self.place(point);
+        let (x, y) = self.at_f64(point);
         Pos2::new(x as f32, y as f32)
     }
 
-    fn place(&self, point: Point) -> (f64, f64) {
+    /// The same without rounding.
+    #[must_use]
+    pub fn at_f64(&self, point: Point) -> (f64, f64) {
         (self.left + point.x * self.scale, self.top + point.y * self.scale)
     }
 
@@ -73,7 +75,9 @@ pub struct Picture {
 
 #[derive(Clone, Debug)]
 struct Piece {
-    layer: Layer,
+    level: Level,
+    /// Sheet and edges stay where they are when the sky is moved.
+    is_still: bool,
     what: What,
 }
 
@@ -103,25 +107,30 @@ impl Shift {
 }
 
 impl Picture {
-    /// Turns a scene into meshes. The scene is expected in the order of its layers.
+    /// Turns a scene into meshes. `level_of` says what may slip between its marks; the scene is expected in the order of
+    /// its layers, which holds within a level.
     #[must_use]
-    pub fn new(scene: &Scene, easel: Easel) -> Self {
+    pub fn new(scene: &Scene, easel: Easel, level_of: impl Fn(&Mark) -> Level) -> Self {
+        let mut marks: Vec<(Level, &Mark)> = scene.marks.iter().map(|mark| (level_of(mark), mark)).collect();
+        marks.sort_by_key(|(level, _)| *level);
         let mut pieces: Vec<Piece> = Vec::new();
         let mut brush = Brush::new(&easel);
-        let mut layer = Layer::Sheet;
-        for mark in &scene.marks {
-            // Overlays slip in between layers, so that a mesh never spans two that they part.
-            let parted = band(mark.layer) != band(layer);
-            if parted || matches!(mark.shape, Shape::Label(_)) {
-                brush.give(layer, &mut pieces);
+        let mut place = (Level::Paper, true);
+        for (level, mark) in marks {
+            let next = (level, matches!(mark.layer, Layer::Sheet | Layer::Plate | Layer::Frame));
+            // One mesh for all that belongs together.
+            if next != place || matches!(mark.shape, Shape::Label(_)) {
+                brush.give(place, &mut pieces);
             }
-            layer = mark.layer;
+            place = next;
             match &mark.shape {
-                Shape::Label(label) => pieces.push(Piece { layer, what: What::Text(label.clone()) }),
+                Shape::Label(label) => {
+                    pieces.push(Piece { level, is_still: next.1, what: What::Text(label.clone()) });
+                }
                 shape => brush.draw(shape),
             }
         }
-        brush.give(layer, &mut pieces);
+        brush.give(place, &mut pieces);
         Picture { easel, pieces }
     }
 
@@ -143,46 +152,31 @@ impl Picture {
             .sum()
     }
 
-    /// Shows the picture with others laid over it, layer by layer.
-    pub fn show(&self, painter: &egui::Painter, shift: Shift, over: &[&Picture]) {
+    /// Shows the picture with another laid over it, level by level. A shift moves what lies within the `frames`; sheet
+    /// and edges stay.
+    pub fn show(&self, painter: &egui::Painter, shift: Shift, frames: &[egui::Rect], over: Option<&Picture>) {
         let painter = painter.with_clip_rect(self.easel.clip.intersect(painter.clip_rect()));
-        let mut next = vec![0; over.len()];
+        let mut waiting = over.map(|over| over.pieces.iter().peekable());
         for piece in &self.pieces {
-            for (picture, next) in over.iter().zip(&mut next) {
-                while let Some(other) = picture.pieces.get(*next)
-                    && other.layer < piece.layer
-                {
-                    other.show(&painter, &picture.easel, Shift::NONE);
-                    *next += 1;
+            while let (Some(waiting), Some(over)) = (&mut waiting, over)
+                && let Some(next) = waiting.next_if(|next| next.level < piece.level)
+            {
+                next.show(&painter, &over.easel, Shift::NONE);
+            }
+            if shift == Shift::NONE || piece.is_still {
+                piece.show(&painter, &self.easel, Shift::NONE);
+            } else {
+                for frame in frames {
+                    let within = painter.with_clip_rect(frame.intersect(painter.clip_rect()));
+                    piece.show(&within, &self.easel, shift);
                 }
             }
-            piece.show(&painter, &self.easel, shift);
         }
-        for (picture, next) in over.iter().zip(next) {
-            for piece in picture.pieces.iter().skip(next) {
-                piece.show(&painter, &picture.easel, Shift::NONE);
+        if let (Some(waiting), Some(over)) = (waiting, over) {
+            for next in waiting {
+                next.show(&painter, &over.easel, Shift::NONE);
             }
         }
-    }
-}
-
-/// Layers between which an overlay may slip.
-const fn band(layer: Layer) -> u8 {
-    match layer {
-        Layer::Sheet | Layer::Plate => 0,
-        Layer::Shade => 1,
-        Layer::Boundaries
-        | Layer::Scale
-        | Layer::Stars
-        | Layer::OtherPaths
-        | Layer::Others
-        | Layer::Track
-        | Layer::Ticks
-        | Layer::Marks
-        | Layer::Leaders => 2,
-        Layer::Skyline => 3,
-        Layer::Labels => 4,
-        Layer::Frame => 5,
     }
 }
 
@@ -279,10 +273,10 @@ impl<'e> Brush<'e> {
         }
     }
 
-    fn give(&mut self, layer: Layer, pieces: &mut Vec<Piece>) {
+    fn give(&mut self, (level, is_still): (Level, bool), pieces: &mut Vec<Piece>) {
         if !self.mesh.is_empty() {
             let mesh = std::mem::take(&mut self.mesh);
-            pieces.push(Piece { layer, what: What::Mesh(Arc::new(mesh)) });
+            pieces.push(Piece { level, is_still, what: What::Mesh(Arc::new(mesh)) });
         }
     }
 
@@ -355,7 +349,7 @@ impl<'e> Brush<'e> {
             if !point.is_finite() {
                 continue;
             }
-            let (x, y) = self.easel.placement.place(*point);
+            let (x, y) = self.easel.placement.at_f64(*point);
             let near = last.is_some_and(|(lx, ly)| libm::hypot(x - lx, y - ly) < LEAST_STEP);
             if !near || index + 1 == points.len() {
                 kept.push(Pos2::new(x as f32, y as f32));
@@ -395,7 +389,7 @@ impl<'e> Brush<'e> {
                 continue;
             }
             let normal = after.at.minus(before.at).unit().turned();
-            let (x, y) = placement.place(point.at);
+            let (x, y) = placement.at_f64(point.at);
             // Thinner than a pixel it is drawn a pixel wide and fainter.
             let width = point.width * placement.scale;
             let half = (width.max(self.feather) / 2.0 - self.feather / 2.0).max(0.0);
@@ -423,7 +417,7 @@ impl<'e> Brush<'e> {
     /// A dot: its middle, a ring on its edge and one a feather outside. The least ones are cones of light as strong as the
     /// dot they stand for.
     fn disc(&mut self, centre: Point, radius: f64, ink: Color32) {
-        let (x, y) = self.easel.placement.place(centre);
+        let (x, y) = self.easel.placement.at_f64(centre);
         let radius = radius * self.easel.placement.scale;
         let small = radius < 1.1 * self.feather;
         // The volume of a cone is a third of its cylinder's.
@@ -470,7 +464,7 @@ impl<'e> Brush<'e> {
             rings => {
                 for [a, b, c, d] in trapezoids(rings, &[]) {
                     let corners = [a, b, c, d].map(|point| {
-                        let (x, y) = placement.place(point);
+                        let (x, y) = placement.at_f64(point);
                         self.vertex(x, y, ink)
                     });
                     self.quad(corners);
@@ -529,7 +523,7 @@ impl<'e> Brush<'e> {
         let placement = self.easel.placement;
         for corners in trapezoids(&[ring], &cuts) {
             let vertices = corners.map(|corner| {
-                let (x, y) = placement.place(back(corner));
+                let (x, y) = placement.at_f64(back(corner));
                 let ink = self.shade_colour(stops, corner.y / length);
                 self.vertex(x, y, ink)
             });
@@ -565,7 +559,7 @@ impl<'e> Brush<'e> {
                 for triangle in [[a, b, c], [a, c, d]] {
                     for piece in cells.iter().flat_map(|cell| triangles_within(triangle, cell)) {
                         let corners = piece.map(|corner| {
-                            let (x, y) = placement.place(corner);
+                            let (x, y) = placement.at_f64(corner);
                             let ink = self.shade_colour(stops, corner.distance(centre) / radius);
                             self.vertex(x, y, ink)
                         });
