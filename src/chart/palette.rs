@@ -33,10 +33,14 @@ pub enum Role {
     Dusk,
     Caution,
     Selection,
+    /// The sky of a night without the Moon.
+    Night,
+    /// The sky under the Moon, and the Moon itself.
+    Moonlight,
 }
 
 impl Role {
-    pub const ALL: [Role; 19] = [
+    pub const ALL: [Role; 21] = [
         Role::Ground,
         Role::Plate,
         Role::Ink,
@@ -56,6 +60,8 @@ impl Role {
         Role::Dusk,
         Role::Caution,
         Role::Selection,
+        Role::Night,
+        Role::Moonlight,
     ];
 
     /// The word that stands for the role in text dumps.
@@ -81,6 +87,8 @@ impl Role {
             Role::Dusk => "dusk",
             Role::Caution => "caution",
             Role::Selection => "selection",
+            Role::Night => "night",
+            Role::Moonlight => "moonlight",
         }
     }
 }
@@ -148,6 +156,8 @@ impl Palette {
             (Role::Dusk, 0x9F_B0B8),
             (Role::Caution, 0xA8_2312),
             (Role::Selection, 0x1D_5FA8),
+            (Role::Night, 0x7F_929D),
+            (Role::Moonlight, 0xEC_E9DC),
         ],
     );
 
@@ -174,6 +184,8 @@ impl Palette {
             (Role::Dusk, 0x3A_5A78),
             (Role::Caution, 0xFF_8A6B),
             (Role::Selection, 0x8C_C8FF),
+            (Role::Night, 0x04_060A),
+            (Role::Moonlight, 0x8F_98A3),
         ],
     );
 
@@ -200,6 +212,8 @@ impl Palette {
             (Role::Dusk, 0x40_0B06),
             (Role::Caution, 0xF0_2E1A),
             (Role::Selection, 0xF0_2E1A),
+            (Role::Night, 0x02_0000),
+            (Role::Moonlight, 0x6A_140B),
         ],
     );
 

@@ -37,6 +37,14 @@ pub enum MarkId {
     Tick(usize),
     /// A date on the path of another body.
     OtherTick { body: Body, date: usize },
+    /// A night of the timeline, by its place in the season.
+    Night(usize),
+    /// Where a body stands at the moment shown.
+    Moment(Body),
+    /// The moment shown, on the timeline.
+    Cursor,
+    /// The silhouette of the horizon with what is written in it.
+    Skyline,
 }
 
 /// What lies over what; later ones cover earlier ones.

@@ -8,7 +8,7 @@
 mod course;
 mod furniture;
 mod layout;
-mod marks;
+pub(super) mod marks;
 
 use crate::season::Season;
 use crate::sky::constellations::{Constellation, boundary_polylines};

@@ -156,7 +156,10 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         let part = Span { from, to };
         let mut rows: Vec<Row> = Vec::new();
         for event in events(&sky, &bodies, wanted.planetary, part)? {
-            rows.push(Row { instant: event.instant, cells: event_row(&sky, &event) });
+            rows.push(Row {
+                instant: event.instant,
+                cells: event_row(&sky, &event),
+            });
         }
         for (index, &body) in bodies.iter().enumerate() {
             if wanted.close && body != Body::Sun {
@@ -167,7 +170,10 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
                     .collect();
                 for event in close_approaches(&sky, body, &others, &stars, Limits::default(), part)?
                 {
-                    rows.push(Row { instant: event.instant, cells: event_row(&sky, &event) });
+                    rows.push(Row {
+                        instant: event.instant,
+                        cells: event_row(&sky, &event),
+                    });
                 }
             }
             if let Some(SiteWord(site)) = &options.site
@@ -175,7 +181,10 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
             {
                 let found = horizon_events(&sky, site, body, &wanted.horizon, part)?;
                 seen[index] |= !found.is_empty();
-                rows.extend(found.iter().map(|event| Row { instant: event.instant, cells: horizon_row(&sky, event) }));
+                rows.extend(found.iter().map(|event| Row {
+                    instant: event.instant,
+                    cells: horizon_row(&sky, event),
+                }));
             }
         }
         rows.sort_by(|a, b| a.instant.days().total_cmp(&b.instant.days()));

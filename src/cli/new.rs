@@ -60,10 +60,19 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         None => system_zone()?,
     };
     let asked = &options.site.0;
-    let site = usual_site(options.name.clone(), asked.latitude, asked.longitude, asked.elevation_m);
+    let site = usual_site(
+        options.name.clone(),
+        asked.latitude,
+        asked.longitude,
+        asked.elevation_m,
+    );
     let dates = match (options.from, options.to) {
         (Some(from), Some(to)) if from < to => SeasonDates { from, to },
-        (Some(_), Some(_)) => return Err(CliError::Words(String::from("--to must be later than --from"))),
+        (Some(_), Some(_)) => {
+            return Err(CliError::Words(String::from(
+                "--to must be later than --from",
+            )));
+        }
         _ => next_dates(options.subject, super::now(), zone, &site)?,
     };
     let scenario = Scenario::new_for(options.subject, dates, site, zone);
@@ -79,7 +88,8 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
                     path.display()
                 )));
             }
-            write_whole(path, text.as_bytes()).map_err(|error: FileError| CliError::Failed(error.to_string()))?;
+            write_whole(path, text.as_bytes())
+                .map_err(|error: FileError| CliError::Failed(error.to_string()))?;
             eprintln!("Scenario written to {}", path.display());
         }
     }
@@ -94,27 +104,42 @@ fn next_dates(
     site: &crate::sky::Site,
 ) -> Result<SeasonDates, CliError> {
     let sky = Sky::for_span(now.plus_days(-500.0), now.plus_days(3_000.0))?;
-    let span = next_season(&sky, subject, now)?
-        .ok_or_else(|| CliError::Failed(format!("no season of {subject} is near; give --from and --to")))?;
+    let span = next_season(&sky, subject, now)?.ok_or_else(|| {
+        CliError::Failed(format!(
+            "no season of {subject} is near; give --from and --to"
+        ))
+    })?;
     let date = |instant: Tt| {
         let utc = sky.tables().utc_from_tt(instant);
         zone.local_from_utc(site.longitude, utc)
             .map(|local| local.date_time.date())
             .map_err(|error| CliError::Failed(error.to_string()))
     };
-    let end = date(span.to)?.plus_days(1).map_err(|error| CliError::Failed(error.to_string()))?;
-    Ok(SeasonDates { from: date(span.from)?, to: end })
+    let end = date(span.to)?
+        .plus_days(1)
+        .map_err(|error| CliError::Failed(error.to_string()))?;
+    Ok(SeasonDates {
+        from: date(span.from)?,
+        to: end,
+    })
 }
 
 /// The zone that this computer is set to: the variable TZ, or where /etc/localtime points.
 fn system_zone() -> Result<Zone, CliError> {
-    let from_variable = std::env::var("TZ").ok().map(|name| name.trim_start_matches(':').to_owned());
+    let from_variable = std::env::var("TZ")
+        .ok()
+        .map(|name| name.trim_start_matches(':').to_owned());
     let from_link = || {
         let target = std::fs::read_link("/etc/localtime").ok()?;
         let text = target.to_str()?.to_owned();
-        text.split_once("zoneinfo/").map(|(_, name)| name.to_owned())
+        text.split_once("zoneinfo/")
+            .map(|(_, name)| name.to_owned())
     };
-    let from_file = || std::fs::read_to_string("/etc/timezone").ok().map(|name| name.trim().to_owned());
+    let from_file = || {
+        std::fs::read_to_string("/etc/timezone")
+            .ok()
+            .map(|name| name.trim().to_owned())
+    };
     [from_variable, from_link(), from_file()]
         .into_iter()
         .flatten()

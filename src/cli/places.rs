@@ -76,7 +76,11 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         for &body in &bodies {
             let cells = place_row(sky, &vantage, site, body, DEFAULT_SUN_DISTANCE)?;
             if let Some(sink) = sink.take() {
-                table = Some(TableWriter::new(sink, PLACE_COLUMNS, options.format.into())?);
+                table = Some(TableWriter::new(
+                    sink,
+                    PLACE_COLUMNS,
+                    options.format.into(),
+                )?);
             }
             if let Some(table) = &mut table {
                 table.row(&cells)?;

@@ -36,7 +36,11 @@ pub(super) fn run_default(scenario: Option<&Path>) -> Result<(), CliError> {
 }
 
 pub(super) fn run(options: &Options) -> Result<(), CliError> {
-    let replace = if options.replace { Replace::Everything } else { Replace::OnlyOurs };
+    let replace = if options.replace {
+        Replace::Everything
+    } else {
+        Replace::OnlyOurs
+    };
     write(options.scenario.as_deref(), &options.out, replace)
 }
 
@@ -49,14 +53,21 @@ fn write(scenario: Option<&Path>, folder: &Path, replace: Replace) -> Result<(),
     let plan = Plan::new(scenario, super::now())?;
     progress.at(0.5);
     let sheet = season_sheet(&plan)?;
-    let outputs: Vec<Output<'_>> =
-        sheet.files.iter().map(|(name, bytes)| Output { name, bytes }).collect();
+    let outputs: Vec<Output<'_>> = sheet
+        .files
+        .iter()
+        .map(|(name, bytes)| Output { name, bytes })
+        .collect();
     write_outputs(folder, &outputs, replace)?;
     drop(progress);
     let mut out = stdout().lock();
     out.write_all(sheet.brief.as_bytes())?;
     out.flush()?;
     let names: Vec<&str> = sheet.files.iter().map(|(name, _)| *name).collect();
-    eprintln!("Season sheet written to {}: {}", folder.display(), names.join(", "));
+    eprintln!(
+        "Season sheet written to {}: {}",
+        folder.display(),
+        names.join(", ")
+    );
     Ok(())
 }

@@ -24,8 +24,8 @@ use serde::{Deserialize, Serialize};
 pub use checked::{NotOneLine, OutOfRange};
 pub use error::ScenarioError;
 use files::FileError;
-pub use skyline::{SkylineError, SkylineOrigin, SkylineSource};
 pub use plan::{Plan, PlanError};
+pub use skyline::{SkylineError, SkylineOrigin, SkylineSource};
 pub use version::NEWEST_VERSION;
 pub use zone::{LocalTime, UnknownZone, Zone};
 

@@ -12,7 +12,9 @@ pub enum PlanError {
     Scenario(#[from] ScenarioError),
     #[error(transparent)]
     Sky(#[from] SkyError),
-    #[error("no season of {0} begins within the reach of the tables; give the scenario a season with from and to")]
+    #[error(
+        "no season of {0} begins within the reach of the tables; give the scenario a season with from and to"
+    )]
     NoSeason(crate::sky::Body),
 }
 
@@ -37,7 +39,11 @@ impl Plan {
         };
         let sky = Sky::for_span(span.from, span.to)?;
         let season = season(&sky, scenario.subject, &scenario.companions, span)?;
-        Ok(Plan { scenario, sky, season })
+        Ok(Plan {
+            scenario,
+            sky,
+            season,
+        })
     }
 }
 

@@ -23,10 +23,16 @@ pub fn brief(plan: &Plan) -> Result<String, SkyError> {
     let mut page = String::new();
     let scenario = &plan.scenario;
     let site = &scenario.site;
-    let clock = LocalClock { scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario,
+        sky: &plan.sky,
+    };
     line(&mut page, &scenario.title);
     line(&mut page, &format!("{}, {}", site.name, place_words(plan)));
-    line(&mut page, &format!("{} to {}", clock.day(plan.season.span.from), last_day(plan)));
+    line(
+        &mut page,
+        &format!("{} to {}", clock.day(plan.season.span.from), last_day(plan)),
+    );
     page.push('\n');
     for paragraph in paragraphs(plan) {
         wrap(&mut page, &paragraph, "");
@@ -73,7 +79,10 @@ fn wrap(page: &mut String, text: &str, indent: &str) {
 }
 
 fn last_day(plan: &Plan) -> String {
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     // The end does not belong to the span.
     clock.day(plan.season.span.to.plus_days(-1.0 / 1_440.0))
 }
@@ -82,7 +91,11 @@ fn last_day(plan: &Plan) -> String {
 fn place_words(plan: &Plan) -> String {
     let site = &plan.scenario.site;
     let side = |angle: Angle, positive: &'static str, negative: &'static str| {
-        let word = if angle < Angle::ZERO { negative } else { positive };
+        let word = if angle < Angle::ZERO {
+            negative
+        } else {
+            positive
+        };
         format!("{:.2}° {word}", angle.degrees().abs())
     };
     format!(
@@ -95,7 +108,12 @@ fn place_words(plan: &Plan) -> String {
 }
 
 fn constellation_at(plan: &Plan, event: &Event) -> Option<&'static str> {
-    let place = plan.sky.geocentre(event.instant).ok()?.place(event.body).ok()?;
+    let place = plan
+        .sky
+        .geocentre(event.instant)
+        .ok()?
+        .place(event.body)
+        .ok()?;
     Some(Constellation::at_icrs(place.direction).name())
 }
 
@@ -105,18 +123,25 @@ fn million_km(au: f64) -> String {
 
 /// A magnitude with a true minus sign.
 fn magnitude_words(magnitude: f64) -> String {
-    format!("magnitude {magnitude:+.1}").replace('-', "\u{2212}").replace("+0.0", "0.0")
+    format!("magnitude {magnitude:+.1}")
+        .replace('-', "\u{2212}")
+        .replace("+0.0", "0.0")
 }
 
 fn paragraphs(plan: &Plan) -> Vec<String> {
     let mut paragraphs = Vec::new();
     let subject = plan.season.subject;
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     for season_loop in &plan.season.loops {
         paragraphs.push(loop_words(plan, season_loop));
     }
     if plan.season.loops.is_empty() {
-        paragraphs.push(format!("{subject} keeps moving eastward among the stars all season."));
+        paragraphs.push(format!(
+            "{subject} keeps moving eastward among the stars all season."
+        ));
     }
     for event in &plan.season.events {
         let side = match event.kind {
@@ -137,11 +162,17 @@ fn paragraphs(plan: &Plan) -> Vec<String> {
 
 fn loop_words(plan: &Plan, season_loop: &Loop) -> String {
     let subject = season_loop.body;
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     let mut words = String::new();
     let back = &season_loop.station_retrograde;
     let forward = &season_loop.station_direct;
-    let among = match (constellation_at(plan, back), constellation_at(plan, forward)) {
+    let among = match (
+        constellation_at(plan, back),
+        constellation_at(plan, forward),
+    ) {
         (Some(first), Some(second)) if first == second => format!(" in {first}"),
         (Some(first), Some(second)) => format!(" from {first} into {second}"),
         _ => String::new(),
@@ -158,8 +189,14 @@ fn loop_words(plan: &Plan, season_loop: &Loop) -> String {
         let _ = write!(
             words,
             " Its path crosses itself where it stood on {} and comes again on {}: a closed loop.",
-            clock.date(crossing.first).map(date_words).unwrap_or_default(),
-            clock.date(crossing.second).map(date_words).unwrap_or_default()
+            clock
+                .date(crossing.first)
+                .map(date_words)
+                .unwrap_or_default(),
+            clock
+                .date(crossing.second)
+                .map(date_words)
+                .unwrap_or_default()
         );
     } else {
         words.push_str(" Its path does not cross itself: an open bend.");
@@ -171,8 +208,10 @@ fn loop_words(plan: &Plan, season_loop: &Loop) -> String {
         };
         let _ = write!(words, " {what} {}.", clock.long(middle.instant));
     }
-    if let Some((EventValue::DistanceAu(distance), instant)) =
-        season_loop.closest.as_ref().map(|event| (event.value, event.instant))
+    if let Some((EventValue::DistanceAu(distance), instant)) = season_loop
+        .closest
+        .as_ref()
+        .map(|event| (event.value, event.instant))
     {
         let _ = write!(
             words,
@@ -181,16 +220,27 @@ fn loop_words(plan: &Plan, season_loop: &Loop) -> String {
             million_km(distance)
         );
         if let Some(diameter) = season_loop.largest_diameter {
-            let _ = write!(words, ", and its disc is then {:.1}\u{2033} across", diameter.arcsec());
+            let _ = write!(
+                words,
+                ", and its disc is then {:.1}\u{2033} across",
+                diameter.arcsec()
+            );
         }
         words.push('.');
     }
     // The brightest moment between the stations of an inner planet lies at one of them: nothing to announce.
     if subject.is_outer_planet()
-        && let Some((EventValue::Magnitude(magnitude), instant)) =
-            season_loop.brightest.as_ref().map(|event| (event.value, event.instant))
+        && let Some((EventValue::Magnitude(magnitude), instant)) = season_loop
+            .brightest
+            .as_ref()
+            .map(|event| (event.value, event.instant))
     {
-        let _ = write!(words, " It is brightest on {}, at {}.", clock.day(instant), magnitude_words(magnitude));
+        let _ = write!(
+            words,
+            " It is brightest on {}, at {}.",
+            clock.day(instant),
+            magnitude_words(magnitude)
+        );
     }
     words
 }
@@ -202,14 +252,18 @@ const MOST_ROWS: usize = 14;
 fn evenings(plan: &Plan) -> Result<String, SkyError> {
     let (scenario, season) = (&plan.scenario, &plan.season);
     let subject = season.subject;
-    let clock = LocalClock { scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario,
+        sky: &plan.sky,
+    };
     let mut text = format!("{subject} over the true horizon, local time:\n");
     let _ = writeln!(
         text,
         "{:<12}{:>9}{:>10}{:>9}{:>14}{:>9}{:>9}",
         "night of", "sunset", "dark from", "rises", "culminates", "at", "sets"
     );
-    let (Some(first), Some(last)) = (clock.date(season.span.from), clock.date(season.span.to)) else {
+    let (Some(first), Some(last)) = (clock.date(season.span.from), clock.date(season.span.to))
+    else {
         return Ok(text);
     };
     let days = last.days_since(first).max(1);
@@ -225,7 +279,8 @@ fn evenings(plan: &Plan) -> Result<String, SkyError> {
             date.day() == 1 && i32::from(date.month()).rem_euclid(step) == 1 % step
         };
         if wanted || rows == 0 {
-            let night = outlook_night(&plan.sky, &scenario.site, subject, date.julian_day_number())?;
+            let night =
+                outlook_night(&plan.sky, &scenario.site, subject, date.julian_day_number())?;
             text.push_str(&evening_row(&clock, date, &night));
             rows += 1;
         }
@@ -239,15 +294,25 @@ fn evenings(plan: &Plan) -> Result<String, SkyError> {
 
 fn evening_row(clock: &LocalClock<'_>, date: CivilDate, night: &OutlookNight) -> String {
     let of = |kind: HorizonKind, body: Body| {
-        let event = if body == Body::Sun { night.of_sun(kind) } else { night.of_subject(kind) };
+        let event = if body == Body::Sun {
+            night.of_sun(kind)
+        } else {
+            night.of_subject(kind)
+        };
         event.map(|event| clock.time(event.instant))
     };
     let sunset = of(HorizonKind::Set, Body::Sun).unwrap_or_else(|| String::from("none"));
     let dark = of(HorizonKind::NauticalDusk, Body::Sun).unwrap_or_else(|| String::from("never"));
-    let subject = |kind: HorizonKind| of(kind, Body::Mars).unwrap_or_else(|| String::from("\u{2013}"));
+    let subject =
+        |kind: HorizonKind| of(kind, Body::Mars).unwrap_or_else(|| String::from("\u{2013}"));
     let (transit, altitude) = night.of_subject(HorizonKind::UpperTransit).map_or_else(
         || (String::from("\u{2013}"), String::from("\u{2013}")),
-        |transit| (clock.time(transit.instant), format!("{:.0}°", transit.value.degrees())),
+        |transit| {
+            (
+                clock.time(transit.instant),
+                format!("{:.0}°", transit.value.degrees()),
+            )
+        },
     );
     format!(
         "{:<12}{sunset:>9}{dark:>10}{:>9}{transit:>14}{altitude:>9}{:>9}\n",
@@ -259,13 +324,18 @@ fn evening_row(clock: &LocalClock<'_>, date: CivilDate, night: &OutlookNight) ->
 
 /// All events of the season, a line each.
 fn dates(page: &mut String, plan: &Plan) {
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     line(page, "Dates:");
     for event in &plan.season.events {
         // Stations in right ascension and light-time distance are for tables.
         if matches!(
             event.kind,
-            EventKind::RaStationRetrograde | EventKind::RaStationDirect | EventKind::ClosestApproachLightTime
+            EventKind::RaStationRetrograde
+                | EventKind::RaStationDirect
+                | EventKind::ClosestApproachLightTime
         ) {
             continue;
         }

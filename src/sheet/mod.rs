@@ -7,6 +7,7 @@ mod strip_words;
 mod svg;
 pub mod table;
 pub mod tables;
+mod timeline_words;
 pub mod words;
 
 pub use brief::brief;
@@ -14,3 +15,4 @@ pub use png::{PngError, png};
 pub use season_sheet::{SeasonSheet, SheetError, printed_strip, season_sheet};
 pub use strip_words::{east_is_left, printed_view, strip_text};
 pub use svg::svg;
+pub use timeline_words::timeline_text;

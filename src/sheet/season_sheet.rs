@@ -42,7 +42,12 @@ pub struct SeasonSheet {
 /// A damaged table of stars.
 pub fn printed_strip(plan: &Plan) -> Result<Scene, StarTableError> {
     let stars = StarCatalogue::embedded()?.stars();
-    Ok(strip(&plan.season, stars, &strip_text(plan), &printed_view(plan)))
+    Ok(strip(
+        &plan.season,
+        stars,
+        &strip_text(plan),
+        &printed_view(plan),
+    ))
 }
 
 /// Makes the season sheet in memory.

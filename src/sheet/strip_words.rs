@@ -10,7 +10,10 @@ use crate::sky::calendar::{CivilDate, month_name};
 #[must_use]
 pub fn strip_text(plan: &Plan) -> StripText {
     let (scenario, season) = (&plan.scenario, &plan.season);
-    let clock = LocalClock { scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario,
+        sky: &plan.sky,
+    };
     let (dates, spacing) = dates(plan);
     StripText {
         title: scenario.title.clone(),
@@ -21,7 +24,11 @@ pub fn strip_text(plan: &Plan) -> StripText {
         event_dates: season
             .events
             .iter()
-            .map(|event| clock.date(event.instant).map_or_else(String::new, short_date))
+            .map(|event| {
+                clock
+                    .date(event.instant)
+                    .map_or_else(String::new, short_date)
+            })
             .collect(),
         cautions: season_cautions(plan),
     }
@@ -30,7 +37,10 @@ pub fn strip_text(plan: &Plan) -> StripText {
 /// The strip as it is printed: A4 across, turned so that it matches the sky over the site unless the scenario turns it.
 #[must_use]
 pub fn printed_view(plan: &Plan) -> StripView {
-    StripView { east_left: east_is_left(plan), ..StripView::A4 }
+    StripView {
+        east_left: east_is_left(plan),
+        ..StripView::A4
+    }
 }
 
 /// East lies to the left where the subject culminates south of the zenith, to the right where north of it; the scenario's
@@ -39,8 +49,10 @@ pub fn printed_view(plan: &Plan) -> StripView {
 pub fn east_is_left(plan: &Plan) -> bool {
     let equatorial = plan.season.frame.equatorial_from_icrs;
     let points = &plan.season.track.points;
-    let declinations: f64 =
-        points.iter().map(|point| (equatorial * point.direction).latitude().degrees()).sum();
+    let declinations: f64 = points
+        .iter()
+        .map(|point| (equatorial * point.direction).latitude().degrees())
+        .sum();
     let mean = Angle::from_degrees(declinations / points.len().max(1) as f64);
     (mean < plan.scenario.site.latitude) != plan.scenario.view.turned
 }
@@ -54,7 +66,10 @@ fn zone_words(plan: &Plan) -> &'static str {
 
 /// `November 2026 to May 2027`
 fn span_words(plan: &Plan) -> String {
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     let month = |date: CivilDate| month_name(date.month()).unwrap_or_default();
     // The end does not belong to the span: a minute before it does.
     let last = plan.season.span.to.plus_days(-1.0 / 1_440.0);
@@ -71,7 +86,8 @@ fn span_words(plan: &Plan) -> String {
 }
 
 /// Days of the month that carry a label, that carry a tick, and how that is said.
-const SHORT_SEASON: (&[u8], &[u8], &str) = (&[5, 9, 13, 17, 21, 25, 29], &[], "a tick every 4 days");
+const SHORT_SEASON: (&[u8], &[u8], &str) =
+    (&[5, 9, 13, 17, 21, 25, 29], &[], "a tick every 4 days");
 const USUAL_SEASON: (&[u8], &[u8], &str) = (&[11, 21], &[6, 16, 26], "ticks 5 days apart");
 const LONG_SEASON: (&[u8], &[u8], &str) = (&[], &[11, 21], "ticks 10 days apart");
 
@@ -84,8 +100,13 @@ fn dates(plan: &Plan) -> (Vec<StripDate>, &'static str) {
         days if days < 420.0 => USUAL_SEASON,
         _ => LONG_SEASON,
     };
-    let clock = LocalClock { scenario, sky: &plan.sky };
-    let Some(mut date) = clock.date(season.span.from) else { return (Vec::new(), spacing) };
+    let clock = LocalClock {
+        scenario,
+        sky: &plan.sky,
+    };
+    let Some(mut date) = clock.date(season.span.from) else {
+        return (Vec::new(), spacing);
+    };
     let mut dates = Vec::new();
     let mut year_shown = None;
     // The calendar ends in the year 9999, far beyond every ephemeris.
@@ -109,15 +130,27 @@ fn dates(plan: &Plan) -> (Vec<StripDate>, &'static str) {
                     // The year stands once, where it begins; the season's first date has it in the title block.
                     let new_year = year_shown.is_some();
                     year_shown = Some(date.year());
-                    let words = if days < 420.0 { short_date(date) } else { short_month(date).to_owned() };
-                    if new_year { format!("{words} {}", year_words(date.year())) } else { words }
+                    let words = if days < 420.0 {
+                        short_date(date)
+                    } else {
+                        short_month(date).to_owned()
+                    };
+                    if new_year {
+                        format!("{words} {}", year_words(date.year()))
+                    } else {
+                        words
+                    }
                 }
                 (DateRank::Month, _) if days < 420.0 => short_date(date),
                 (DateRank::Month, _) | (DateRank::Day, 1) => short_month(date).to_owned(),
                 (DateRank::Day, day) => day.to_string(),
                 (DateRank::Fine, _) => String::new(),
             };
-            dates.push(StripDate { instant, label, rank });
+            dates.push(StripDate {
+                instant,
+                label,
+                rank,
+            });
         }
         match date.plus_days(1) {
             Ok(next) => date = next,

@@ -35,7 +35,9 @@ pub const PLACE_COLUMNS: &[&str] = &[
 ];
 
 /// Columns of a table of events.
-pub const EVENT_COLUMNS: &[&str] = &["body", "kind", "jd_tt", "utc", "value", "value_is", "caution"];
+pub const EVENT_COLUMNS: &[&str] = &[
+    "body", "kind", "jd_tt", "utc", "value", "value_is", "caution",
+];
 
 /// A row of [`PLACE_COLUMNS`]. `near_sun` is how near to a Sun that is up, or that may be up where no site is given, a body
 /// carries the Sun caution.
@@ -62,7 +64,10 @@ pub fn place_row(
         .cautions
         .and(light.cautions)
         .and(sky.tables().delta_t(instant).cautions())
-        .with_if(elongation < near_sun && sun_may_be_up(vantage, &sun), Caution::SunNear);
+        .with_if(
+            elongation < near_sun && sun_may_be_up(vantage, &sun),
+            Caution::SunNear,
+        );
     let unless_sun = |value: f64| if body == Body::Sun { None } else { Some(value) };
     Ok(vec![
         Cell::text(body.word()),
@@ -82,7 +87,8 @@ pub fn place_row(
         Cell::text(Constellation::at_icrs(place.direction).abbreviation()),
         Cell::number(seen.map(|seen| seen.altitude.degrees()), 7),
         Cell::number(
-            seen.zip(site).map(|(seen, site)| apparent_from_true(seen.altitude, &site.air).degrees()),
+            seen.zip(site)
+                .map(|(seen, site)| apparent_from_true(seen.altitude, &site.air).degrees()),
             7,
         ),
         Cell::number(seen.map(|seen| seen.azimuth.degrees()), 7),
@@ -112,7 +118,11 @@ fn event_cells(
         Cell::text(utc_tenths(sky, instant)),
         value,
         Cell::text(value_is),
-        Cell::text(cautions.and(sky.tables().delta_t(instant).cautions()).to_string()),
+        Cell::text(
+            cautions
+                .and(sky.tables().delta_t(instant).cautions())
+                .to_string(),
+        ),
     ]
 }
 
@@ -121,8 +131,12 @@ fn event_cells(
 pub fn event_row(sky: &Sky, event: &Event) -> Vec<Cell> {
     let (value, value_is) = match event.value {
         EventValue::Longitude(angle) => (Cell::Number(angle.degrees(), 6), String::from("lon_deg")),
-        EventValue::RightAscension(angle) => (Cell::Number(angle.degrees(), 6), String::from("ra_deg")),
-        EventValue::Elongation(angle) => (Cell::Number(angle.degrees(), 6), String::from("elong_deg")),
+        EventValue::RightAscension(angle) => {
+            (Cell::Number(angle.degrees(), 6), String::from("ra_deg"))
+        }
+        EventValue::Elongation(angle) => {
+            (Cell::Number(angle.degrees(), 6), String::from("elong_deg"))
+        }
         EventValue::DistanceAu(distance) => (Cell::Number(distance, 9), String::from("dist_au")),
         EventValue::Magnitude(magnitude) => (Cell::Number(magnitude, 3), String::from("magnitude")),
         EventValue::Separation(angle) => {
@@ -131,17 +145,39 @@ pub fn event_row(sky: &Sky, event: &Event) -> Vec<Cell> {
                 Some(Other::Star(name)) => name.to_lowercase().replace(' ', "_"),
                 None => String::from("nothing"),
             };
-            (Cell::Number(angle.degrees(), 6), format!("separation_deg_from_{partner}"))
+            (
+                Cell::Number(angle.degrees(), 6),
+                format!("separation_deg_from_{partner}"),
+            )
         }
         EventValue::Constellation(name) => (Cell::text(name), String::from("constellation")),
     };
-    event_cells(sky, [event.body.word(), event.kind.word()], event.instant, (value, value_is), event.cautions)
+    event_cells(
+        sky,
+        [event.body.word(), event.kind.word()],
+        event.instant,
+        (value, value_is),
+        event.cautions,
+    )
 }
 
 /// A row of [`EVENT_COLUMNS`] for a rising, transit, setting, dusk or dawn.
 #[must_use]
 pub fn horizon_row(sky: &Sky, event: &HorizonEvent) -> Vec<Cell> {
-    let value_is = if event.kind == HorizonKind::UpperTransit { "altitude_deg" } else { "azimuth_deg" };
-    let value = (Cell::Number(event.value.degrees(), 6), String::from(value_is));
-    event_cells(sky, [event.body.word(), event.kind.word()], event.instant, value, sky.cautions())
+    let value_is = if event.kind == HorizonKind::UpperTransit {
+        "altitude_deg"
+    } else {
+        "azimuth_deg"
+    };
+    let value = (
+        Cell::Number(event.value.degrees(), 6),
+        String::from(value_is),
+    );
+    event_cells(
+        sky,
+        [event.body.word(), event.kind.word()],
+        event.instant,
+        value,
+        sky.cautions(),
+    )
 }

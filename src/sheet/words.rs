@@ -23,7 +23,11 @@ pub fn utc_shortest(sky: &Sky, instant: Tt) -> String {
     let utc = sky.tables().utc_from_tt(instant);
     let seconds = (utc.days() - utc.days().floor()) * 86_400.0;
     let whole = (seconds - seconds.round()).abs() < 5e-4;
-    let precision = if whole { Precision::Second } else { Precision::Decimals(3) };
+    let precision = if whole {
+        Precision::Second
+    } else {
+        Precision::Decimals(3)
+    };
     utc_text(utc, precision).unwrap_or_else(|error| error.to_string())
 }
 
@@ -37,7 +41,11 @@ pub fn utc_tenths(sky: &Sky, instant: Tt) -> String {
 /// A year as people write it: 2027, 139, 747 BC.
 #[must_use]
 pub fn year_words(year: i32) -> String {
-    if year > 0 { year.to_string() } else { format!("{} BC", 1 - year) }
+    if year > 0 {
+        year.to_string()
+    } else {
+        format!("{} BC", 1 - year)
+    }
 }
 
 /// `19 February 2027`
@@ -75,10 +83,17 @@ impl LocalClock<'_> {
         let utc = self.sky.tables().utc_from_tt(instant);
         let minutes = (utc.days() * 1_440.0).round();
         let utc = crate::sky::Utc::from_days(minutes / 1_440.0 + 1e-9);
-        let local = self.scenario.zone.local_from_utc(self.scenario.site.longitude, utc).ok()?;
+        let local = self
+            .scenario
+            .zone
+            .local_from_utc(self.scenario.site.longitude, utc)
+            .ok()?;
         let minute_of_day = (local.date_time.second_of_day() / 60.0 + 0.01).floor() as u32;
         let clock = format!("{:02}:{:02}", minute_of_day / 60, minute_of_day % 60);
-        Some((local.date_time.date(), format!("{clock} {}", local.abbreviation)))
+        Some((
+            local.date_time.date(),
+            format!("{clock} {}", local.abbreviation),
+        ))
     }
 
     /// `Friday 19 February 2027, 17:43 CET`
@@ -103,7 +118,9 @@ impl LocalClock<'_> {
     #[must_use]
     pub fn time(&self, instant: Tt) -> String {
         self.date_and_time(instant)
-            .map_or_else(String::new, |(_, clock)| clock.split(' ').next().unwrap_or_default().to_owned())
+            .map_or_else(String::new, |(_, clock)| {
+                clock.split(' ').next().unwrap_or_default().to_owned()
+            })
     }
 
     /// The civil date.
@@ -118,21 +135,38 @@ impl LocalClock<'_> {
 pub fn season_cautions(plan: &crate::scenario::Plan) -> Vec<String> {
     let (scenario, season) = (&plan.scenario, &plan.season);
     let mut sentences = Vec::new();
-    let nearest_sun = season.track.points.iter().map(|point| point.elongation.degrees()).fold(180.0, f64::min);
+    let nearest_sun = season
+        .track
+        .points
+        .iter()
+        .map(|point| point.elongation.degrees())
+        .fold(180.0, f64::min);
     if nearest_sun < scenario.sun_distance.degrees() {
         sentences.push(String::from(
             "Never point optics or eyes near the Sun: wait until the whole disc has set beyond the true horizon (hidden by a roof is not set), and stop before it rises.",
         ));
     }
-    for caution in season.cautions.and(plan.sky.tables().delta_t(season.span.middle()).cautions()).iter() {
+    for caution in season
+        .cautions
+        .and(plan.sky.tables().delta_t(season.span.middle()).cautions())
+        .iter()
+    {
         let mut sentence = caution.sentence().to_owned();
         if caution == Caution::DeltaTModelled {
             let delta_t = plan.sky.tables().delta_t(season.span.middle());
-            sentence = format!("{sentence}: clock times may be {:.0} s off", delta_t.error_seconds.ceil());
+            sentence = format!(
+                "{sentence}: clock times may be {:.0} s off",
+                delta_t.error_seconds.ceil()
+            );
         }
         sentences.push(capitalised(&sentence) + ".");
     }
-    let last_year = LocalClock { scenario, sky: &plan.sky }.date(season.span.to).map_or(0, |date| date.year());
+    let last_year = LocalClock {
+        scenario,
+        sky: &plan.sky,
+    }
+    .date(season.span.to)
+    .map_or(0, |date| date.year());
     if let Some(doubt) = scenario.zone.doubt(last_year) {
         sentences.push(capitalised(doubt.trim_end_matches('.')) + ".");
     }
@@ -143,5 +177,7 @@ pub fn season_cautions(plan: &crate::scenario::Plan) -> Vec<String> {
 #[must_use]
 pub fn capitalised(sentence: &str) -> String {
     let mut letters = sentence.chars();
-    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
+    letters.next().map_or_else(String::new, |first| {
+        first.to_uppercase().chain(letters).collect()
+    })
 }

@@ -6,11 +6,11 @@ use crate::chart::scene::{Layer, MarkId, Paint, Scene, Shape, Stroke};
 use crate::season::{EventKind, EventValue};
 
 /// Half the height of a mark, points.
-pub(super) const RADIUS: f64 = 3.7;
+pub(in crate::chart) const RADIUS: f64 = 3.7;
 
 /// A mark; where several events stand at one place, the first in this order stands for all.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
-pub(super) enum Glyph {
+pub(in crate::chart) enum Glyph {
     Station,
     Opposition,
     Conjunction,
@@ -43,7 +43,7 @@ impl Glyph {
 }
 
 /// The mark and the words of an event on the strip; `None` for those that are told in tables only.
-pub(super) const fn told(kind: EventKind) -> Option<(Glyph, &'static str)> {
+pub(in crate::chart) const fn told(kind: EventKind) -> Option<(Glyph, &'static str)> {
     Some(match kind {
         EventKind::StationRetrograde => (Glyph::Station, "turns back"),
         EventKind::StationDirect => (Glyph::Station, "turns forward"),
@@ -79,7 +79,7 @@ pub(super) fn value(value: &EventValue) -> Option<String> {
 }
 
 /// A number with a true minus sign.
-pub(super) fn signed(value: f64, decimals: usize) -> String {
+pub(in crate::chart) fn signed(value: f64, decimals: usize) -> String {
     let plain = format!("{:.decimals$}", value.abs());
     let is_zero = plain.chars().all(|figure| matches!(figure, '0' | '.'));
     match value < 0.0 && !is_zero {
@@ -90,7 +90,7 @@ pub(super) fn signed(value: f64, decimals: usize) -> String {
 }
 
 /// Draws a mark around a point: an outline in ink over the plate.
-pub(super) fn draw(scene: &mut Scene, id: MarkId, layer: Layer, glyph: Glyph, at: Point) {
+pub(in crate::chart) fn draw(scene: &mut Scene, id: MarkId, layer: Layer, glyph: Glyph, at: Point) {
     let edge = Stroke::of(Role::Ink, 1.05);
     let polygon = |corners: &[(f64, f64)]| Shape::Area {
         rings: vec![
