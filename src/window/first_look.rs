@@ -42,7 +42,7 @@ fn lack(plan: &Plan, instant: Tt) -> Option<f64> {
     let sun = vantage.horizontal(vantage.place(Body::Sun).ok()?.apparent)?;
     let seen = vantage.horizontal(vantage.place(plan.season.subject).ok()?.apparent)?;
     let altitude = apparent_from_true(seen.altitude, &scenario.site.air);
-    let over_skyline = altitude - scenario.skyline.skyline().altitude_at(seen.azimuth);
+    let over_skyline = altitude - scenario.skyline.polygon().altitude_at(seen.azimuth);
     let conditions = &scenario.conditions;
     let missing = |wanted: Angle, is: Angle| (wanted - is).degrees().max(0.0);
     Some(

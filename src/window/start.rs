@@ -1,7 +1,9 @@
 //! Opening the window, and saying plainly why there is none.
 
-use std::panic::{AssertUnwindSafe, catch_unwind, set_hook, take_hook};
+use std::panic::{AssertUnwindSafe, catch_unwind, resume_unwind, set_hook, take_hook};
 use std::path::PathBuf;
+use std::sync::Arc;
+use std::sync::atomic::{AtomicBool, Ordering};
 
 use super::app::Window;
 use crate::scenario::Scenario;
@@ -43,21 +45,30 @@ pub fn open(scenario: Scenario, path: Option<PathBuf>, now: Tt) -> Result<(), No
     };
     // The window system's own library panics where a shared library is missing; that is no fault of the user's, and its
     // report would not help. Once the window stands, a panic is a fault of ours and is reported as any other.
+    let stands = Arc::new(AtomicBool::new(false));
     let usual = take_hook();
-    set_hook(Box::new(|_| {}));
+    let of_hook = Arc::clone(&stands);
+    set_hook(Box::new(move |report| {
+        if of_hook.load(Ordering::Relaxed) {
+            usual(report);
+        }
+    }));
+    let of_window = Arc::clone(&stands);
     let result = catch_unwind(AssertUnwindSafe(|| {
         eframe::run_native(
             "Loopwright",
             options,
             Box::new(move |context| {
-                set_hook(usual);
+                of_window.store(true, Ordering::Relaxed);
                 Ok(Box::new(Window::new(&context.egui_ctx, scenario, path, now)?))
             }),
         )
     }));
+    let stood = stands.swap(true, Ordering::Relaxed);
     match result {
         Ok(Ok(())) => Ok(()),
         Ok(Err(error)) => Err(reason(&error, display)),
+        Err(panic) if stood => resume_unwind(panic),
         Err(panic) => {
             let text = panic
                 .downcast_ref::<String>()
