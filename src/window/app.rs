@@ -27,8 +27,9 @@ use crate::sky::Tt;
 /// Width of the column of readings and of what opens beside the strip, screen points at text scale 1.
 const READINGS_WIDTH: f32 = 268.0;
 const ASIDE_WIDTH: f32 = 300.0;
-/// Height of the timeline.
-const TIMELINE_HEIGHT: f32 = 150.0;
+/// The timeline's part of the window's height, and its limits in screen points at text scale 1.
+const TIMELINE_PART: f32 = 0.165;
+const TIMELINE_HEIGHT: (f32, f32) = (128.0, 190.0);
 
 /// What the worker hands back.
 pub enum Done {
@@ -107,7 +108,7 @@ impl Window {
             dressed: None,
             owed_steps: 0.0,
         };
-        window.dress(ctx);
+        window.dress(ctx, 1.0);
         window.ask();
         Ok(window)
     }
@@ -180,8 +181,15 @@ impl Window {
         (is_of_plan && tonight.span.contains(self.state.view.instant)).then_some(tonight)
     }
 
-    fn dress(&mut self, ctx: &egui::Context) {
-        let wanted = (self.state.view.theme, self.state.view.text_scale());
+    /// Size of text and of what goes with it: larger windows have larger letters, though not in proportion, and in steps,
+    /// so that resizing does not ask for letters of ever new sizes.
+    fn scale(&self, window: egui::Vec2) -> f32 {
+        let grown = (window.x * window.y / (1280.0 * 800.0)).max(0.01).powf(0.25).clamp(1.0, 1.4);
+        (grown * self.state.view.text_scale() * 20.0).round() / 20.0
+    }
+
+    fn dress(&mut self, ctx: &egui::Context, scale: f32) {
+        let wanted = (self.state.view.theme, scale);
         if self.dressed != Some(wanted) {
             dress(ctx, &palette(wanted.0), wanted.1);
             self.dressed = Some(wanted);
@@ -306,9 +314,8 @@ impl Window {
         }
     }
 
-    fn heading(&self, ui: &mut Ui, colours: &Palette) -> Vec<Action> {
+    fn heading(&self, ui: &mut Ui, colours: &Palette, scale: f32) -> Vec<Action> {
         let mut actions = Vec::new();
-        let scale = self.state.view.text_scale();
         ui.horizontal(|ui| {
             let shown = self.state.plan.as_ref().map_or(&*self.state.document.scenario, |plan| &plan.scenario);
             ui.with_layout(egui::Layout::right_to_left(egui::Align::Center), |ui| {
@@ -341,6 +348,7 @@ impl Window {
                 ui.with_layout(egui::Layout::left_to_right(egui::Align::Center), |ui| {
                     let title = egui::RichText::new(&shown.title).font(font(Font::SerifItalic, TITLE * scale));
                     ui.add(egui::Label::new(title).truncate().selectable(false));
+                    ui.add_space(6.0 * scale);
                     if self.state.document.is_changed() {
                         caption(ui, "not saved");
                     }
@@ -424,7 +432,7 @@ impl Window {
     }
 
     /// Time and how it is stepped.
-    fn time_line(&mut self, ui: &mut Ui, colours: &Palette) -> Vec<Action> {
+    fn time_line(&mut self, ui: &mut Ui, colours: &Palette, scale: f32) -> Vec<Action> {
         let mut actions = Vec::new();
         let Some(plan) = self.state.plan.clone() else { return actions };
         let view = self.state.view.clone();
@@ -434,16 +442,16 @@ impl Window {
             let weekday = clock.date(view.instant).map_or("", |date| date.weekday().name());
             caption(ui, weekday);
             let shown = local_text(scenario, tables, view.instant);
-            let width = 128.0 * view.text_scale();
+            let width = 128.0 * scale;
             let typed = self.date_field.show(ui, colours, "date and time at the site", width, &shown, |text| {
                 read_local(scenario, tables, view.instant, text)
             });
             actions.extend(typed.map(Action::GoTo));
             caption(ui, &zone_text(scenario, tables, view.instant));
-            caption(ui, &universal_text(tables, view.instant).replace('T', " ").replace('Z', " UTC"));
-            ui.add_space(14.0);
+            caption(ui, &universal_words(&shown, &universal_text(tables, view.instant)));
+            ui.add_space(10.0 * scale);
             caption(ui, "step");
-            let width = 62.0 * view.text_scale();
+            let width = 62.0 * scale;
             let typed = self.step_field.show(ui, colours, "step", width, &view.step.to_string(), |text| {
                 text.parse::<Step>().map_err(|error| error.to_string())
             });
@@ -461,11 +469,11 @@ impl Window {
             if word(ui, colours, "slower", "slower", Standing::Open).clicked() {
                 actions.push(Action::Speed(-1));
             }
-            caption(ui, &format!("{} steps a second", view.steps_a_second()));
+            caption(ui, &format!("{} a second", view.steps_a_second()));
             if word(ui, colours, "faster", "faster", Standing::Open).clicked() {
                 actions.push(Action::Speed(1));
             }
-            ui.add_space(14.0);
+            ui.add_space(10.0 * scale);
             caption(ui, "hold");
             for hold in Hold::ALL {
                 let standing = if view.hold == hold { Standing::Chosen } else { Standing::Open };
@@ -474,7 +482,7 @@ impl Window {
                     actions.push(Action::SetHold(hold));
                 }
             }
-            ui.add_space(14.0);
+            ui.add_space(10.0 * scale);
             caption(ui, "event");
             if word(ui, colours, "before", "event before", Standing::Command).clicked() {
                 actions.push(Action::PreviousEvent);
@@ -579,6 +587,13 @@ impl Window {
     }
 }
 
+/// Universal time as it is shown beside local time: the date only where it is another.
+fn universal_words(local: &str, universal: &str) -> String {
+    let (date, time) = universal.split_once('T').unwrap_or(("", universal));
+    let time = time.replace('Z', " UTC");
+    if local.starts_with(date) { time } else { format!("{date} {time}") }
+}
+
 /// Who looks at what in a plan.
 fn watch(plan: &Plan) -> Watch<'_> {
     let scenario = &plan.scenario;
@@ -610,10 +625,11 @@ impl eframe::App for Window {
             self.apply(&ctx, action);
         }
         self.play(&ctx);
-        self.dress(&ctx);
         self.ask();
         let colours = palette(self.state.view.theme);
-        let scale = self.state.view.text_scale();
+        let whole = ui.available_size();
+        let scale = self.scale(whole);
+        self.dress(&ctx, scale);
         let ground = colour(colours.colour(Role::Ground));
         let edge = |left: f32, right: f32, top: f32, bottom: f32| Frame::NONE.fill(ground).inner_margin(Margin {
             left: left as i8,
@@ -623,17 +639,18 @@ impl eframe::App for Window {
         });
 
         Side::top("heading").frame(edge(MARGIN, MARGIN, 8.0, 2.0)).show_separator_line(false).show(ui, |ui| {
-            actions.extend(self.heading(ui, &colours));
+            actions.extend(self.heading(ui, &colours, scale));
             actions.extend(self.question(ui, &colours));
         });
         Side::bottom("time").frame(edge(MARGIN, MARGIN, 2.0, 8.0)).show_separator_line(false).show(ui, |ui| {
             actions.extend(self.caption_line(ui, &colours));
             if let Some(plan) = self.state.plan.clone() {
-                let height = TIMELINE_HEIGHT * scale.max(1.0);
+                let (least, most) = TIMELINE_HEIGHT;
+                let height = (TIMELINE_PART * whole.y).clamp(least * scale, most * scale);
                 let view = self.state.view.clone();
-                actions.extend(timeline_pane::show(ui, &mut self.timeline, &plan, &view, &colours, height));
+                actions.extend(timeline_pane::show(ui, &mut self.timeline, &plan, &view, &colours, height, scale));
             }
-            actions.extend(self.time_line(ui, &colours));
+            actions.extend(self.time_line(ui, &colours, scale));
         });
         Side::right("readings")
             .exact_size(READINGS_WIDTH * scale)
@@ -667,7 +684,7 @@ impl eframe::App for Window {
                 strip.summary = self.strip_summary();
                 let view = self.state.view.clone();
                 let overlay = |made: &Arc<StripMade>| self.overlay(made);
-                actions.extend(strip_pane::show(ui, &mut strip, &plan, &view, &colours, overlay));
+                actions.extend(strip_pane::show(ui, &mut strip, &plan, &view, &colours, scale, overlay));
                 self.strip = strip;
             }
             None => {

@@ -299,25 +299,34 @@ impl SeasonForm {
             }
         });
         let mut entered = false;
-        let entries: [(Entry, &str, &mut String); 8] = [
-            (Entry::Title, "title", &mut self.title),
-            (Entry::From, "first day", &mut self.from),
-            (Entry::To, "day after the last", &mut self.to),
-            (Entry::Site, "place", &mut self.site),
-            (Entry::Latitude, "latitude, degrees north", &mut self.latitude),
-            (Entry::Longitude, "longitude, degrees east", &mut self.longitude),
-            (Entry::Elevation, "elevation, m", &mut self.elevation),
-            (Entry::Zone, "clock", &mut self.zone),
-        ];
-        for (entry, name, text) in entries {
-            let label = caption(ui, name);
-            let edit = egui::TextEdit::singleline(text).desired_width(f32::INFINITY);
-            let response = ui.add(edit).labelled_by(label.id);
-            entered |= response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
-            for (_, mistake) in mistakes.iter().filter(|(wrong, _)| *wrong == entry) {
-                complaint(ui, palette, mistake);
-            }
-        }
+        let wide = ui.available_width();
+        let half = (wide - ui.spacing().item_spacing.x) / 2.0;
+        let mut entry = |ui: &mut Ui, entry: Entry, name: &str, text: &mut String, width: f32| {
+            ui.vertical(|ui| {
+                ui.set_width(width);
+                let label = caption(ui, name);
+                let edit = egui::TextEdit::singleline(text).desired_width(f32::INFINITY);
+                let response = ui.add(edit).labelled_by(label.id);
+                entered |= response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
+                for (_, mistake) in mistakes.iter().filter(|(wrong, _)| *wrong == entry) {
+                    complaint(ui, palette, mistake);
+                }
+            });
+        };
+        entry(ui, Entry::Title, "title", &mut self.title, wide);
+        ui.horizontal_top(|ui| {
+            entry(ui, Entry::From, "first day", &mut self.from, half);
+            entry(ui, Entry::To, "day after the last", &mut self.to, half);
+        });
+        entry(ui, Entry::Site, "place", &mut self.site, wide);
+        ui.horizontal_top(|ui| {
+            entry(ui, Entry::Latitude, "latitude, \u{b0} north", &mut self.latitude, half);
+            entry(ui, Entry::Longitude, "longitude, \u{b0} east", &mut self.longitude, half);
+        });
+        ui.horizontal_top(|ui| {
+            entry(ui, Entry::Elevation, "elevation, m", &mut self.elevation, half);
+            entry(ui, Entry::Zone, "clock", &mut self.zone, half);
+        });
         ui.add_space(6.0);
         ui.horizontal(|ui| {
             let made = self.scenario().ok().filter(|made| *made != *self.of);

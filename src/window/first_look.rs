@@ -9,7 +9,11 @@ use crate::sky::{Angle, Body, Tt};
 /// Between samples of the night: ten minutes.
 const STEP_DAYS: f64 = 1.0 / 144.0;
 
-/// For an outer planet the night of the loop's middle, for an inner one that of the first greatest elongation; there the
+/// So many days beside the event, so that the mark of the moment does not cover the event's own: after an opposition,
+/// before a greatest elongation, which a station soon follows.
+const BESIDE_DAYS: f64 = 5.0;
+
+/// For an outer planet a night after the opposition, for an inner one before the first greatest elongation; there the
 /// first time at which the subject stands over the skyline, as high as the scenario asks, in a sky as dark as it asks.
 /// Where it never does, the time when it comes nearest to that.
 #[must_use]
@@ -21,7 +25,8 @@ pub(super) fn first_look(plan: &Plan) -> Tt {
         EventKind::Opposition => !inner,
         _ => false,
     });
-    let day = event.map_or_else(|| season.span.middle(), |event| event.instant);
+    let beside = if inner { -BESIDE_DAYS } else { BESIDE_DAYS };
+    let day = event.map_or_else(|| season.span.middle(), |event| event.instant.plus_days(beside));
     let night = night_at(&plan.sky, &plan.scenario.site, day);
     let best = samples(night)
         .filter(|instant| season.span.contains(*instant))

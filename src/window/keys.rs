@@ -111,9 +111,9 @@ pub fn pressed(ctx: &Context) -> Vec<Command> {
         if typing && !binding.modifiers.command && binding.command != Command::Help {
             continue;
         }
-        while ctx.input_mut(|input| input.consume_key(binding.modifiers, binding.key)) {
-            commands.push(binding.command);
-        }
+        // A slow frame may hold several presses of a key.
+        let count = ctx.input_mut(|input| input.count_and_consume_key(binding.modifiers, binding.key));
+        commands.extend(std::iter::repeat_n(binding.command, count));
     }
     commands
 }

@@ -82,9 +82,9 @@ fn sentence(text: impl Into<String>) -> Line {
     Line { name: "", value: Value::Sentence(text.into()) }
 }
 
-/// Distance: the Moon's needs more figures.
+/// Distance: the Moon's needs another figure.
 fn distance(body: Body, au: f64) -> String {
-    plain(au, if body == Body::Moon { 5 } else { 3 })
+    plain(au, if body == Body::Moon { 4 } else { 3 })
 }
 
 /// Right ascension to a tenth of a second.
@@ -221,7 +221,7 @@ fn large(subject: &Readings) -> Vec<Line> {
 
 fn small(plan: &Plan, subject: &Readings, moment: &Moment, tonight: Option<&Tonight>) -> Vec<Line> {
     let mut lines = vec![
-        number("altitude", plain(subject.apparent_altitude.degrees(), 1), "\u{b0} refracted"),
+        number("altitude", plain(subject.apparent_altitude.degrees(), 1), "\u{b0}"),
         number("azimuth", plain(subject.azimuth.degrees(), 1), "\u{b0}"),
         sentence(super::capitalised(&over_skyline(subject))),
     ];
@@ -230,7 +230,7 @@ fn small(plan: &Plan, subject: &Readings, moment: &Moment, tonight: Option<&Toni
         let part = passage.part.as_deref().unwrap_or("the skyline");
         let verb = if passage.clears { "clears" } else { "goes behind" };
         lines.push(sentence(format!(
-            "{} {part} at {}, azimuth {:.0}\u{b0}",
+            "{} {part} at {}, az {:.0}\u{b0}",
             super::capitalised(verb),
             clock.time(passage.instant),
             passage.azimuth.degrees()
@@ -265,7 +265,7 @@ fn passages(plan: &Plan, tonight: Option<&Tonight>) -> Vec<Line> {
     let passage = |event: Option<crate::season::horizon::HorizonEvent>| {
         event.map_or_else(
             || String::from(never),
-            |event| format!("{}, azimuth {:.0}\u{b0}", clock.time(event.instant), event.value.degrees()),
+            |event| format!("{}, az {:.0}\u{b0}", clock.time(event.instant), event.value.degrees()),
         )
     };
     lines.push(words("rises", passage(passages.rise)));

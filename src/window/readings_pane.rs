@@ -8,6 +8,11 @@ use super::theme::{LARGE, SMALL, TITLE, colour, font};
 use super::widgets::{Standing, caution, word};
 use crate::chart::{Font, Palette, Role};
 
+/// Where the decimal mark of every number stands, from the left edge of the column.
+const DECIMAL_MARK: f32 = 112.0;
+/// Where words begin.
+const WORDS: f32 = 78.0;
+
 /// Draws the column.
 pub fn show(ui: &mut Ui, column: &Column, palette: &Palette, text_scale: f32) -> Vec<Action> {
     let mut actions = Vec::new();
@@ -26,19 +31,26 @@ pub fn show(ui: &mut Ui, column: &Column, palette: &Palette, text_scale: f32) ->
         ui.add_space(4.0 * text_scale);
         caution(ui, palette, sentence);
     }
-    ui.add_space(6.0 * text_scale);
+    ui.add_space(2.0 * text_scale);
     for line in &column.large {
         large(ui, line, &ink, text_scale);
     }
-    ui.add_space(8.0 * text_scale);
+    ui.add_space(7.0 * text_scale);
+    let mut before: Option<&Line> = None;
     for line in &column.small {
+        // Sentences stand a little apart from rows.
+        let is_sentence = |line: &Line| matches!(line.value, Value::Sentence(_));
+        if before.is_some_and(|before| is_sentence(before) != is_sentence(line)) {
+            ui.add_space(4.0 * text_scale);
+        }
         small(ui, line, &ink, text_scale);
+        before = Some(line);
     }
-    ui.add_space(10.0 * text_scale);
+    ui.add_space(7.0 * text_scale);
     for line in &column.sky {
         small(ui, line, &ink, text_scale);
     }
-    ui.add_space(10.0 * text_scale);
+    ui.add_space(7.0 * text_scale);
     others(ui, &column.others, &ink, text_scale);
     actions
 }
@@ -75,12 +87,15 @@ fn number(ui: &Ui, x: f32, baseline: f32, text: &str, unit: &str, fonts: (FontId
 }
 
 fn large(ui: &mut Ui, line: &Line, ink: &Inks, scale: f32) {
-    let rect = row(ui, 54.0 * scale, &line.text());
+    let rect = row(ui, 41.0 * scale, &line.text());
     let small = font(Font::Sans, SMALL * scale);
-    ui.painter().text(rect.left_top(), Align2::LEFT_TOP, line.name, small.clone(), ink.faint);
+    let foot = rect.bottom();
+    // On the baseline of the number.
+    let at = pos2(rect.left(), foot - 0.2 * (LARGE - SMALL) * scale);
+    ui.painter().text(at, Align2::LEFT_BOTTOM, line.name, small.clone(), ink.faint);
     if let Value::Number { number: text, unit } = &line.value {
-        let x = rect.left() + 82.0 * scale;
-        number(ui, x, rect.bottom() + 2.0 * scale, text, unit, (font(Font::Sans, LARGE * scale), small), ink);
+        let x = rect.left() + DECIMAL_MARK * scale;
+        number(ui, x, foot, text, unit, (font(Font::Sans, LARGE * scale), small), ink);
     }
 }
 
@@ -88,18 +103,17 @@ fn small(ui: &mut Ui, line: &Line, ink: &Inks, scale: f32) {
     let size = font(Font::Sans, SMALL * scale);
     if let Value::Sentence(text) = &line.value {
         ui.add(egui::Label::new(egui::RichText::new(text).font(size).color(ink.ink)).selectable(false).wrap());
-        ui.add_space(2.0 * scale);
         return;
     }
-    let rect = row(ui, 18.5 * scale, &line.text());
+    let rect = row(ui, 17.0 * scale, &line.text());
     let foot = rect.bottom() - 1.5 * scale;
     ui.painter().text(pos2(rect.left(), foot), Align2::LEFT_BOTTOM, line.name, size.clone(), ink.faint);
     match &line.value {
         Value::Number { number: text, unit } => {
-            number(ui, rect.left() + 97.0 * scale, foot, text, unit, (size.clone(), size), ink);
+            number(ui, rect.left() + DECIMAL_MARK * scale, foot, text, unit, (size.clone(), size), ink);
         }
         Value::Words(text) => {
-            ui.painter().text(pos2(rect.left() + 76.0 * scale, foot), Align2::LEFT_BOTTOM, text, size, ink.ink);
+            ui.painter().text(pos2(rect.left() + WORDS * scale, foot), Align2::LEFT_BOTTOM, text, size, ink.ink);
         }
         Value::Sentence(_) => {}
     }
@@ -107,7 +121,7 @@ fn small(ui: &mut Ui, line: &Line, ink: &Inks, scale: f32) {
 
 fn others(ui: &mut Ui, rows: &[Row], ink: &Inks, scale: f32) {
     let size = font(Font::Sans, SMALL * scale);
-    let marks = [112.0, 168.0, 222.0].map(|x| x * scale);
+    let marks = [DECIMAL_MARK, 164.0, 220.0].map(|x| x * scale);
     let rect = row(ui, 17.0 * scale, "body, elongation, distance, magnitude");
     for (heading, x) in ["elong.", "au", "mag"].into_iter().zip(marks) {
         let at = pos2(rect.left() + x - 14.0 * scale, rect.bottom() - 2.0 * scale);
@@ -117,7 +131,7 @@ fn others(ui: &mut Ui, rows: &[Row], ink: &Inks, scale: f32) {
         let elongation = other.elongation.as_ref();
         let spoken = elongation.map_or_else(String::new, |(angle, side)| format!(" elongation {angle}\u{b0} {side},"));
         let told = format!("{}{spoken} distance {} au, magnitude {}", other.name, other.distance, other.magnitude);
-        let rect = row(ui, 18.5 * scale, &told);
+        let rect = row(ui, 17.0 * scale, &told);
         let foot = rect.bottom() - 1.5 * scale;
         ui.painter().text(pos2(rect.left(), foot), Align2::LEFT_BOTTOM, other.name, size.clone(), ink.ink);
         let [at_elongation, at_distance, at_magnitude] = marks.map(|x| rect.left() + x);

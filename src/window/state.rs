@@ -258,6 +258,7 @@ impl State {
             self.waiting = Some(Box::new(action));
             return None;
         }
+        self.notice = None;
         match action {
             Action::GoTo(instant) => self.go_to(instant),
             Action::GoToDay(instant) => self.go_to_day(instant),

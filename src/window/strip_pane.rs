@@ -18,8 +18,8 @@ use crate::sky::constellations::Constellation;
 use crate::sky::stars::StarCatalogue;
 use crate::sky::{Angle, Tt, Vec3};
 
-/// Screen points to a point of the sheet at text scale 1 in a window of usual size.
-const SHEET_SCALE: f64 = 1.22;
+/// Screen points to a point of the sheet at text scale 1.
+pub(super) const SHEET_SCALE: f64 = 1.22;
 /// How near the pointer must come to a mark, screen points.
 const REACH: f64 = 9.0;
 /// Degrees along the strip, at least and at most.
@@ -83,13 +83,6 @@ impl StripPane {
     }
 }
 
-/// Size of a sheet point on screen: larger windows have larger letters, though not in proportion.
-fn sheet_scale(width: f32, text_scale: f32) -> f64 {
-    let grown = (f64::from(width) / 1000.0).sqrt().clamp(1.0, 1.35);
-    // In steps, so that resizing does not ask for letters of ever new sizes.
-    (SHEET_SCALE * grown * f64::from(text_scale) * 20.0).round() / 20.0
-}
-
 /// Draws the strip into all the room there is.
 pub fn show(
     ui: &mut Ui,
@@ -97,12 +90,13 @@ pub fn show(
     plan: &Arc<Plan>,
     view: &View,
     palette: &Palette,
+    text_scale: f32,
     overlay: impl FnOnce(&Arc<StripMade>) -> Option<Scene>,
 ) -> Vec<Action> {
     let mut actions = Vec::new();
     let size = ui.available_size();
     let (rect, response) = ui.allocate_exact_size(size, Sense::click_and_drag());
-    let scale = sheet_scale(rect.width(), view.text_scale());
+    let scale = SHEET_SCALE * f64::from(text_scale);
     let placement = Placement { left: f64::from(rect.left()), top: f64::from(rect.top()), scale };
     let wanted = StripView {
         width: (f64::from(rect.width()) / scale).round(),

@@ -12,7 +12,7 @@ pub const BODY: f32 = 14.0;
 /// Labels beside readings, captions.
 pub const SMALL: f32 = 12.5;
 /// The three large numbers.
-pub const LARGE: f32 = 38.0;
+pub const LARGE: f32 = 34.0;
 /// The title.
 pub const TITLE: f32 = 24.0;
 /// White space at the edges of the window.
@@ -119,6 +119,8 @@ pub fn dress(ctx: &egui::Context, palette: &Palette, text_scale: f32) {
             state.corner_radius = CornerRadius::same(2);
             state.expansion = 0.0;
         }
+        // A field is a lighter patch until it is pointed at.
+        widgets.inactive.bg_stroke = Stroke::NONE;
         style.text_styles = [
             (TextStyle::Small, font(Font::Sans, SMALL * text_scale)),
             (TextStyle::Body, font(Font::Sans, BODY * text_scale)),

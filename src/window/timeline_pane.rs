@@ -7,7 +7,7 @@ use egui::{Sense, Ui, Vec2, WidgetInfo};
 
 use super::painter::{Easel, Picture, Placement, Shift};
 use super::state::{Action, View};
-use super::strip_pane::focus_ring;
+use super::strip_pane::{SHEET_SCALE, focus_ring};
 use crate::chart::{
     Level, MarkId, Palette, Timeline, TimelineLayout, TimelineText, TimelineView, timeline, timeline_cursor,
 };
@@ -96,6 +96,7 @@ pub fn show(
     view: &View,
     palette: &Palette,
     height: f32,
+    text_scale: f32,
 ) -> Vec<Action> {
     let mut actions = Vec::new();
     let size = Vec2::new(ui.available_width(), height);
@@ -108,7 +109,7 @@ pub fn show(
     let wanted = TimelineView {
         width: f64::from(rect.width()),
         height: f64::from(rect.height()),
-        text_scale: 1.2 * f64::from(view.text_scale()),
+        text_scale: SHEET_SCALE * f64::from(text_scale),
         window: view.nights,
     };
     let easel = Easel {
