@@ -469,7 +469,7 @@ impl Window {
             if word(ui, colours, "slower", "slower", Standing::Open).clicked() {
                 actions.push(Action::Speed(-1));
             }
-            caption(ui, &format!("{} a second", view.steps_a_second()));
+            caption(ui, &format!("{} steps a second", view.steps_a_second()));
             if word(ui, colours, "faster", "faster", Standing::Open).clicked() {
                 actions.push(Action::Speed(1));
             }
@@ -499,9 +499,11 @@ impl Window {
             Panel::None => Vec::new(),
             Panel::Keys => {
                 ui.heading("Keys");
+                ui.spacing_mut().interact_size.y = 0.0;
+                ui.spacing_mut().item_spacing.y = 1.0;
                 egui::Grid::new("keys").num_columns(2).show(ui, |ui| {
                     for binding in &BINDINGS {
-                        ui.label(binding.shown);
+                        ui.label(egui::RichText::new(binding.shown).small());
                         caption(ui, binding.words);
                         ui.end_row();
                     }

@@ -11,7 +11,7 @@ const STEP_DAYS: f64 = 1.0 / 144.0;
 
 /// So many days beside the event, so that the mark of the moment does not cover the event's own: after an opposition,
 /// before a greatest elongation, which a station soon follows.
-const BESIDE_DAYS: f64 = 5.0;
+const BESIDE_DAYS: f64 = 7.0;
 
 /// For an outer planet a night after the opposition, for an inner one before the first greatest elongation; there the
 /// first time at which the subject stands over the skyline, as high as the scenario asks, in a sky as dark as it asks.

@@ -285,8 +285,9 @@ fn sky(plan: &Plan, moment: &Moment, tonight: Option<&Tonight>) -> Vec<Line> {
     let state = &moment.sky;
     let up = if state.moon_is_up { "up" } else { "down" };
     let mut lines = vec![
-        number("Sun", plain(state.sun_altitude.degrees(), 1), format!("\u{b0}, {}", state.twilight.phrase())),
-        words("Moon", format!("{}, {:.0} % lit, {up}", state.moon_phase(), 100.0 * state.moon_lit)),
+        words("sky", state.twilight.phrase()),
+        number("Sun", plain(state.sun_altitude.degrees(), 1), "\u{b0} altitude"),
+        words("Moon", format!("{}, {:.0} %, {up}", state.moon_phase(), 100.0 * state.moon_lit)),
     ];
     if let Some(tonight) = tonight {
         let at = |kind: HorizonKind| {

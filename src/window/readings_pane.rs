@@ -8,8 +8,10 @@ use super::theme::{LARGE, SMALL, TITLE, colour, font};
 use super::widgets::{Standing, caution, word};
 use crate::chart::{Font, Palette, Role};
 
-/// Where the decimal mark of every number stands, from the left edge of the column.
+/// Where the decimal mark of a number stands, from the left edge of the column.
 const DECIMAL_MARK: f32 = 112.0;
+/// The same of the three large ones.
+const LARGE_DECIMAL_MARK: f32 = 136.0;
 /// Where words begin.
 const WORDS: f32 = 78.0;
 
@@ -94,7 +96,7 @@ fn large(ui: &mut Ui, line: &Line, ink: &Inks, scale: f32) {
     let at = pos2(rect.left(), foot - 0.2 * (LARGE - SMALL) * scale);
     ui.painter().text(at, Align2::LEFT_BOTTOM, line.name, small.clone(), ink.faint);
     if let Value::Number { number: text, unit } = &line.value {
-        let x = rect.left() + DECIMAL_MARK * scale;
+        let x = rect.left() + LARGE_DECIMAL_MARK * scale;
         number(ui, x, foot, text, unit, (font(Font::Sans, LARGE * scale), small), ink);
     }
 }
@@ -121,10 +123,10 @@ fn small(ui: &mut Ui, line: &Line, ink: &Inks, scale: f32) {
 
 fn others(ui: &mut Ui, rows: &[Row], ink: &Inks, scale: f32) {
     let size = font(Font::Sans, SMALL * scale);
-    let marks = [DECIMAL_MARK, 164.0, 220.0].map(|x| x * scale);
+    let marks = [96.0, 160.0, 229.0].map(|x| x * scale);
     let rect = row(ui, 17.0 * scale, "body, elongation, distance, magnitude");
-    for (heading, x) in ["elong.", "au", "mag"].into_iter().zip(marks) {
-        let at = pos2(rect.left() + x - 14.0 * scale, rect.bottom() - 2.0 * scale);
+    for ((heading, x), back) in ["elong.", "au", "mag"].into_iter().zip(marks).zip([20.0, 8.0, 14.0]) {
+        let at = pos2(rect.left() + x - back * scale, rect.bottom() - 2.0 * scale);
         ui.painter().text(at, Align2::LEFT_BOTTOM, heading, size.clone(), ink.faint);
     }
     for other in rows {

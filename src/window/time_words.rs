@@ -37,13 +37,13 @@ pub(super) fn universal_text(tables: &TimeTables, instant: Tt) -> String {
 
 /// Reads a date, or a date and a time, of the site's clock. A date alone keeps the time of day shown before.
 pub(super) fn read_local(scenario: &Scenario, tables: &TimeTables, before: Tt, text: &str) -> Result<Tt, String> {
-    const FORM: &str = "write a date and a time of the site's clock, as in 2027-02-12 18:50";
+    const FORM: &str = "write a date, or a date and a time of the site's clock, as in 2027-02-12 18:50";
     let text = text.trim();
     let (date, time) = match text.split_once([' ', 'T']) {
         Some((date, time)) => (date, Some(time.trim())),
         None => (text, None),
     };
-    let date = date.parse().map_err(|error| format!("{error}; {FORM}"))?;
+    let date = date.parse().map_err(|_| format!("\"{date}\" is no date; {FORM}"))?;
     let longitude = scenario.site.longitude;
     let seconds = match time {
         Some(time) => clock_seconds(time).ok_or_else(|| format!("\"{time}\" is no time of day; {FORM}"))?,
