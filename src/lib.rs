@@ -16,7 +16,8 @@
 //! # Layers, each using only those below it
 //! ```text
 //! main.rs     command line (or window); nothing more
-//! cli         one file a command
+//! cli         one file a command; opens the window where none is named
+//! window      the egui program: strip, timeline, readings
 //! sheet       Scene -> SVG, PNG; tables as CSV and JSON; files written whole or not at all
 //! chart       season -> Scene: plain shapes and labels, no ephemeris calls
 //! scenario    reads, checks and saves the document
@@ -31,3 +32,4 @@ pub mod scenario;
 pub mod season;
 pub mod sheet;
 pub mod sky;
+pub mod window;

@@ -9,6 +9,7 @@ mod new;
 mod places;
 mod progress;
 mod sheet;
+mod window;
 pub mod words;
 
 use std::ffi::OsString;
@@ -30,7 +31,7 @@ use crate::sky::{Tt, Utc};
 #[derive(Debug, Parser)]
 #[command(name = "loopwright", version, args_conflicts_with_subcommands = true)]
 #[command(after_help = "Examples:
-  loopwright                                   the season sheet of the built-in scenario, in season-sheet/
+  loopwright                                   opens the window; without a display writes the season sheet instead
   loopwright sheet my-season.ron --out print   the sheet of a scenario of yours, in print/
   loopwright new --subject venus --site -35.1,138.6,50 --zone Australia/Adelaide --out venus.ron
   loopwright places --bodies mars --from 2026-11 --to 2027-06 --step 1d
@@ -126,7 +127,7 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         }
     };
     let result = match &line.command {
-        None => sheet::run_default(line.scenario.as_deref()),
+        None => window::run(line.scenario.as_deref()),
         Some(Command::Sheet(options)) => sheet::run(options),
         Some(Command::New(options)) => new::run(options),
         Some(Command::Places(options)) => places::run(options),
