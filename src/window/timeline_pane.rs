@@ -123,7 +123,7 @@ pub fn show(
     });
     if !fits {
         let made = timeline(&plan.season, &nights.darkness, &nights.text, &wanted);
-        let picture = Picture::new(&made.scene, easel.clone(), |_| Level::Paper);
+        let picture = Picture::new(&made.scene, easel.clone(), |_| Level::Stars);
         pane.drawn = Some(Drawn { nights: Arc::clone(&nights), view: wanted, timeline: made, picture });
     }
     let Some(drawn) = &pane.drawn else { return actions };
