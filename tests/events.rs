@@ -381,6 +381,57 @@ fn crossings_close_the_loop() {
     assert!(closed > 10);
 }
 
+/// Against sampling the boundaries every six minutes (the lookup itself is checked in `constellations.rs`).
+#[test]
+fn constellation_entries_agree_with_dense_sampling() {
+    use loopwright::sky::constellations::Constellation;
+    let sky = Sky::de440().unwrap();
+    for (body, days) in [
+        (Body::Mercury, 400.0),
+        (Body::Venus, 500.0),
+        (Body::Mars, 700.0),
+        (Body::Saturn, 1_500.0),
+    ] {
+        let span = span(2_461_000.5, 2_461_000.5 + days);
+        let kinds = Kinds::of(&[EventKind::ConstellationEntry]);
+        let found: Vec<(f64, &str)> = events(&sky, &[body], kinds, span)
+            .unwrap()
+            .iter()
+            .map(|event| match event.value {
+                EventValue::Constellation(name) => (event.instant.days(), name),
+                _ => panic!("{event:?}"),
+            })
+            .collect();
+        let step = 1.0 / 240.0;
+        let at = |k: usize| {
+            let instant = span.from.plus_days(k as f64 * step);
+            let place = sky.geocentre(instant).unwrap().place(body).unwrap();
+            (
+                instant.days(),
+                Constellation::at_icrs(place.direction).abbreviation(),
+            )
+        };
+        let mut sampled = Vec::new();
+        let mut before = at(0);
+        for k in 1..(days / step) as usize {
+            let here = at(k);
+            if here.1 != before.1 {
+                sampled.push(here);
+            }
+            before = here;
+        }
+        assert_eq!(found.len(), sampled.len(), "{body}: {found:?} {sampled:?}");
+        for (ours, theirs) in found.iter().zip(&sampled) {
+            assert_eq!(ours.1, theirs.1, "{body}");
+            assert!(
+                theirs.0 - ours.0 >= -1e-6 && theirs.0 - ours.0 <= step,
+                "{body} {ours:?} {theirs:?}"
+            );
+        }
+        assert!(!found.is_empty(), "{body}");
+    }
+}
+
 proptest! {
     #![proptest_config(ProptestConfig { cases: 24, failure_persistence: None, ..ProptestConfig::default() })]
 

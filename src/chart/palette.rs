@@ -64,6 +64,17 @@ impl Role {
         Role::Moonlight,
     ];
 
+    /// The roles in which text may be set.
+    pub const TEXT: [Role; 7] = [
+        Role::Ink,
+        Role::FaintInk,
+        Role::RegionName,
+        Role::Companion,
+        Role::Sun,
+        Role::Caution,
+        Role::Selection,
+    ];
+
     /// The word that stands for the role in text dumps.
     #[must_use]
     pub const fn word(self) -> &'static str {
@@ -250,15 +261,6 @@ impl Palette {
 mod tests {
     use super::*;
 
-    const TEXT: [Role; 7] = [
-        Role::Ink,
-        Role::FaintInk,
-        Role::RegionName,
-        Role::Companion,
-        Role::Sun,
-        Role::Caution,
-        Role::Selection,
-    ];
     /// Lines that may lie beside each other and mean different things.
     const TRACKS: [Role; 5] = [
         Role::Subject,
@@ -302,7 +304,7 @@ mod tests {
     fn text_and_tracks_stand_out_in_light_and_dark() {
         for palette in [Palette::LIGHT, Palette::DARK] {
             for behind in [Role::Ground, Role::Plate].map(|role| palette.colour(role)) {
-                for role in TEXT {
+                for role in Role::TEXT {
                     let ratio = contrast(palette.colour(role), behind);
                     assert!(ratio >= 4.5, "{} {role:?} {ratio:.2}", palette.name);
                 }
@@ -314,7 +316,8 @@ mod tests {
         }
     }
 
-    /// Machado, Oliveira, Fernandes 2009, IEEE Trans. Vis. Comput. Graph. 15:1291, severity 1.0, on linear light;
+    /// Machado, Oliveira, Fernandes 2009, IEEE Trans. Vis. Comput. Graph. 15:1291, severity 1.0, on linear light
+    /// (compared with the table in the Python package colorspacious 1.1.2);
     /// CIE 1976 L*a*b* distance for D65 (CIE 15). The least distance of 10, about four just noticeable
     /// differences, is our choice.
     #[test]

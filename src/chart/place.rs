@@ -5,6 +5,8 @@ use super::geometry::{self, Point, Rect};
 
 /// Space kept between two labels, points.
 const LABEL_GAP: f64 = 3.2;
+/// A leader may run this far upon lines: enough to cross one, not to follow it, points.
+const LONGEST_UPON: f64 = 16.0;
 /// What a point of air around a label is worth, and how much of it counts, points.
 const AIR: f64 = 0.35;
 const MOST_AIR: f64 = 9.0;
@@ -90,6 +92,25 @@ impl Ground {
                 .leaders
                 .iter()
                 .any(|&leader| geometry::crossing((from, to), leader).is_some())
+            && self.length_upon_lines(from, to) <= LONGEST_UPON
+    }
+
+    /// How much of a leader lies upon lines or close beside them, points.
+    fn length_upon_lines(&self, from: Point, to: Point) -> f64 {
+        const STEP: f64 = 2.0;
+        let length = from.distance(to);
+        let (mut at, mut upon) = (0.0, 0.0);
+        while at < length {
+            let point = from.between(to, at / length);
+            let is_upon = self.lines.iter().any(|&(a, b, half)| {
+                geometry::distance_to_segment(point, a, b).0 < half + LINE_GAP
+            });
+            if is_upon {
+                upon += STEP;
+            }
+            at += STEP;
+        }
+        upon
     }
 
     /// Room around a free box, up to `most` points.
@@ -141,7 +162,7 @@ impl Ground {
                 .dots
                 .iter()
                 .filter(|(centre, radius, _)| {
-                    offer.bounds.nearest(*centre).distance(*centre) < radius + 0.8
+                    offer.bounds.nearest(*centre).distance(*centre) < radius + 2.0
                 })
                 .map(|dot| dot.2)
                 .sum();

@@ -30,8 +30,9 @@ pub struct StripView {
     /// Of the whole sheet, points.
     pub width: f64,
     pub height: f64,
-    /// Longitude grows to the left, as the sky is seen by someone facing the subject at its culmination south of the
-    /// zenith; turned round for the south.
+    /// Longitude grows to the left and north is up, as the sky is seen by someone facing the subject at its culmination
+    /// south of the zenith; `false` turns the sky by half a turn, for a culmination north of the zenith: longitude grows
+    /// to the right and south is up.
     pub east_left: bool,
     /// The piece of sky to show; `None` for all of the season's path, as large as it fits.
     pub window: Option<StripWindow>,
@@ -151,10 +152,10 @@ pub fn strip(season: &Season, stars: &[Star], text: &StripText, view: &StripView
         };
         let named = painter.sky(stars);
         painter.track(&subject);
+        painter.other(&sun, Role::Sun);
         for course in &companions {
             painter.other(course, Role::Companion);
         }
-        painter.other(&sun, Role::Sun);
         painter.keep_off_ecliptic();
         let groups = painter.events(&subject);
         painter.dates(&subject, DateRank::Month);
@@ -623,12 +624,8 @@ impl RowPainter<'_> {
             }
             let may_lead = date.rank == DateRank::Month;
             let offers = beside(at, normal, reach, &label, may_lead);
-            let taken = if may_lead {
-                self.ground.take_across(&offers)
-            } else {
-                self.ground.take(offers)
-            };
-            if let Some(taken) = taken {
+            // Across another strand a leader would give the date to that one: then rather no label.
+            if let Some(taken) = self.ground.take(offers) {
                 self.label(MarkId::Tick(index), label, taken, Role::FaintInk);
             }
         }
@@ -827,11 +824,6 @@ impl RowPainter<'_> {
         if !self.row.owns(chief.longitude) {
             return;
         }
-        let glyph_width = if group.len() > 1 {
-            2.0 * marks::RADIUS + 4.0
-        } else {
-            0.0
-        };
         let dates = group
             .iter()
             .map(|told| text::width(&told.date, Font::SansStrong, SIZE, 0.0))
@@ -841,12 +833,19 @@ impl RowPainter<'_> {
             .map(|told| text::width(&told.words, Font::Sans, SIZE, 0.0))
             .fold(0.0, f64::max);
         let gap = if dates > 0.0 { 5.0 } else { 0.0 };
-        let width = glyph_width + dates + gap + words;
+        let glyph_width = 2.0 * marks::RADIUS + 4.0;
+        let bare = dates + gap + words;
         let height = LEADING * (group.len() - 1) as f64
             + (Font::Sans.ascent() + Font::Sans.descent()) * SIZE;
         let distances = [
             7.0, 10.0, 14.0, 18.0, 24.0, 30.0, 38.0, 48.0, 60.0, 75.0, 95.0, 120.0, 150.0, 190.0,
         ];
+        let mut with_glyphs = group.len() > 1;
+        let width = if with_glyphs {
+            bare + glyph_width
+        } else {
+            bare
+        };
         let offers = around(
             chief.at,
             (width, height),
@@ -856,7 +855,14 @@ impl RowPainter<'_> {
             8.0,
             Some(chief.square),
         );
-        let Some(taken) = self.ground.take_across(&offers) else {
+        let mut taken = self.ground.take_across(&offers);
+        if taken.is_none() {
+            // No leader gets through: the mark itself, repeated before the words, ties them to the path.
+            with_glyphs = true;
+            let offers = self.anywhere(chief.at, bare + glyph_width, height);
+            taken = self.ground.take(offers);
+        }
+        let Some(taken) = taken else {
             return;
         };
         self.leader(MarkId::Event(chief.index), taken, Role::FaintInk);
@@ -864,7 +870,7 @@ impl RowPainter<'_> {
             let id = MarkId::Event(told.index);
             let base = taken.bounds.top + Font::Sans.ascent() * SIZE + LEADING * line as f64;
             let mut x = taken.bounds.left;
-            if group.len() > 1 {
+            if with_glyphs {
                 let middle = Point::new(x + marks::RADIUS, base - 0.34 * SIZE);
                 marks::draw(self.scene, id, Layer::Labels, told.glyph, middle);
                 x += glyph_width;
@@ -882,9 +888,31 @@ impl RowPainter<'_> {
         }
     }
 
+    /// Places all over the row, the nearest to a point cheapest, without leaders.
+    fn anywhere(&self, near: Point, width: f64, height: f64) -> Vec<Offer> {
+        const STEP: f64 = 7.0;
+        let frame = self.row.frame;
+        let mut offers = Vec::new();
+        let mut y = frame.top + height / 2.0;
+        while y < frame.bottom {
+            let mut x = frame.left + width / 2.0;
+            while x < frame.right {
+                let bounds = Rect::around(Point::new(x, y), width, height);
+                offers.push(Offer {
+                    bounds,
+                    cost: bounds.nearest(near).distance(near),
+                    leader_from: None,
+                });
+                x += STEP;
+            }
+            y += STEP;
+        }
+        offers
+    }
+
     /// Names of the bright stars, small, out of the way.
     fn star_names(&mut self, mut named: Vec<Named>) {
-        let faintest = if self.row.scale > 12.0 { 3.9 } else { 2.6 };
+        let faintest = if self.row.scale > 12.0 { 3.6 } else { 2.6 };
         named.retain(|star| star.magnitude <= faintest);
         named.sort_by(|a, b| a.magnitude.total_cmp(&b.magnitude));
         for star in named.into_iter().take(16) {

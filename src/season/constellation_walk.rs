@@ -1,8 +1,8 @@
 //! Following a planet across constellation boundaries.
 //!
 //! Boundaries have corners, and a planet may clip one within an hour. So the walk takes steps that cannot reach the
-//! nearest boundary at the planet's greatest apparent speed; near a boundary the least step is three minutes, within
-//! which a visit to a corner may go unnoticed.
+//! nearest boundary at the planet's speed of the day and what it can gain; near a boundary the least step is three
+//! minutes, within which a visit to a corner may go unnoticed.
 
 use super::search::root;
 use super::types::{Event, EventKind, EventValue};
@@ -14,20 +14,19 @@ use crate::sky::{Angle, Body, Tt, Vec3};
 const LEAST_STEP_DAYS: f64 = 1.0 / 480.0;
 const TOLERANCE_DAYS: f64 = 5e-7;
 
-/// More than a planet's greatest apparent motion a day, seen from the Earth's centre (largest daily motions over
-/// 1900-2100 from DE440: Mercury 2.21, Venus 1.28, Mars 0.80, Jupiter 0.25, Saturn 0.14, Uranus 0.065, Neptune 0.04
-/// degrees; a tenth and more added).
-const fn greatest_motion_per_day(body: Body) -> Angle {
+/// More than a planet's speed among the stars can change between two nodes of its grid, degrees a day (largest changes of
+/// the daily motion within 8 days, 4 for Mercury, from DE440 over 1900-2100: Mercury 0.761, Venus 0.336, Mars 0.116,
+/// Jupiter 0.027, Saturn 0.015, Uranus 0.0076, Neptune 0.0046; a quarter and more added).
+const fn greatest_change_of_motion(body: Body) -> Angle {
     Angle::from_degrees(match body {
-        Body::Mercury => 2.5,
-        Body::Venus => 1.4,
-        Body::Mars => 0.9,
-        Body::Jupiter => 0.3,
-        Body::Saturn => 0.17,
-        Body::Uranus => 0.08,
-        Body::Neptune => 0.06,
-        Body::Sun => 1.1,
-        Body::Moon => 18.0,
+        Body::Mercury => 1.0,
+        Body::Venus => 0.42,
+        Body::Mars => 0.15,
+        Body::Jupiter => 0.035,
+        Body::Saturn => 0.02,
+        Body::Uranus => 0.011,
+        Body::Neptune => 0.007,
+        Body::Sun | Body::Moon => 6.0,
     })
 }
 
@@ -48,21 +47,21 @@ impl Walk {
         to_days: f64,
         found: &mut Vec<Event>,
     ) -> Result<(), SkyError> {
-        let direction = |days: f64| -> Result<Vec3, SkyError> {
-            Ok(sky.geocentre(Tt::from_days(days))?.place(body)?.direction)
-        };
-        let speed = greatest_motion_per_day(body).radians();
+        let place = |days: f64| sky.geocentre(Tt::from_days(days))?.place(body);
+        let direction = |days: f64| -> Result<Vec3, SkyError> { Ok(place(days)?.direction) };
+        let reserve = greatest_change_of_motion(body).radians();
         let mut days = from_days;
-        let mut here = direction(days)?;
+        let mut here = place(days)?;
         let mut inside = match self.at {
             Some((at, constellation)) if at == from_days => constellation,
-            _ => Constellation::at_icrs(here),
+            _ => Constellation::at_icrs(here.direction),
         };
         while days < to_days {
-            let step = (clearance(here).radians() / speed).max(LEAST_STEP_DAYS);
+            let speed = here.direction_rate().norm() + reserve;
+            let step = (clearance(here.direction).radians() / speed).max(LEAST_STEP_DAYS);
             let next = (days + step).min(to_days);
-            here = direction(next)?;
-            let entered = Constellation::at_icrs(here);
+            here = place(next)?;
+            let entered = Constellation::at_icrs(here.direction);
             if entered != inside {
                 let sign = |days: f64| -> Result<f64, SkyError> {
                     Ok(if Constellation::at_icrs(direction(days)?) == inside {

@@ -139,7 +139,7 @@ impl Look {
         })
     }
 
-    fn from_sun(&self) -> f64 {
+    fn longitude_off_sun(&self) -> f64 {
         (self.planet.ecliptic_of_date().longitude - self.sun.ecliptic_of_date().longitude)
             .signed()
             .radians()
@@ -176,7 +176,7 @@ impl Look {
                     K::QuadratureEast,
                     K::QuadratureWest,
                 ],
-                &|| self.from_sun(),
+                &|| self.longitude_off_sun(),
             ),
             longitude_rate: when(&[K::StationRetrograde, K::StationDirect], &|| {
                 self.planet.ecliptic_rate().longitude.radians()
@@ -394,7 +394,7 @@ impl Follower<'_> {
                 continue;
             }
             let days = root((a.days, fa), (b.days, fb), ROOT_TOLERANCE_DAYS, |days| {
-                Ok::<_, SkyError>(off(Look::at(self.sky, self.body, days)?.from_sun()))
+                Ok::<_, SkyError>(off(Look::at(self.sky, self.body, days)?.longitude_off_sun()))
             })?;
             let look = Look::at(self.sky, self.body, days)?;
             let kind = match kind {
@@ -418,9 +418,8 @@ impl Follower<'_> {
         c: Sample,
         found: &mut Vec<Event>,
     ) -> Result<(), SkyError> {
-        if !self.kinds.contains(EventKind::GreatestBrightness)
-            || !(b.magnitude < a.magnitude && b.magnitude <= c.magnitude)
-        {
+        let least = b.magnitude < a.magnitude && b.magnitude <= c.magnitude;
+        if !(least && self.kinds.contains(EventKind::GreatestBrightness)) {
             return Ok(());
         }
         let at = |days: f64| Ok::<_, SkyError>(Look::at(self.sky, self.body, days)?.magnitude());

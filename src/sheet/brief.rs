@@ -2,15 +2,15 @@
 
 use std::fmt::Write;
 
-use super::words::{LocalClock, date_words, season_cautions, short_date};
+use super::words::{LocalClock, date_words, season_cautions, short_date, year_words};
 use crate::scenario::Plan;
 use crate::season::horizon::HorizonKind;
 use crate::season::outlook::{OutlookNight, outlook_night};
 use crate::season::{Event, EventKind, EventValue, Loop};
+use crate::sky::Angle;
 use crate::sky::calendar::CivilDate;
 use crate::sky::constellations::Constellation;
 use crate::sky::place::{AU_KM, SkyError};
-use crate::sky::{Angle, Body};
 
 /// Columns of the page.
 const WIDTH: usize = 78;
@@ -271,6 +271,7 @@ fn evenings(plan: &Plan) -> Result<String, SkyError> {
     let mut date = first;
     let months = f64::from(days) / 30.44;
     let step = (months / MOST_ROWS as f64).ceil() as i32;
+    let with_year = first.year() + 1 < last.year();
     let mut rows = 0;
     while date < last && rows < MOST_ROWS + 2 {
         let wanted = if months * 2.0 <= MOST_ROWS as f64 {
@@ -281,7 +282,7 @@ fn evenings(plan: &Plan) -> Result<String, SkyError> {
         if wanted || rows == 0 {
             let night =
                 outlook_night(&plan.sky, &scenario.site, subject, date.julian_day_number())?;
-            text.push_str(&evening_row(&clock, date, &night));
+            text.push_str(&evening_row(&clock, (date, with_year), &night));
             rows += 1;
         }
         match date.plus_days(1) {
@@ -292,19 +293,25 @@ fn evenings(plan: &Plan) -> Result<String, SkyError> {
     Ok(text)
 }
 
-fn evening_row(clock: &LocalClock<'_>, date: CivilDate, night: &OutlookNight) -> String {
-    let of = |kind: HorizonKind, body: Body| {
-        let event = if body == Body::Sun {
-            night.of_sun(kind)
-        } else {
-            night.of_subject(kind)
-        };
-        event.map(|event| clock.time(event.instant))
+fn evening_row(
+    clock: &LocalClock<'_>,
+    (date, with_year): (CivilDate, bool),
+    night: &OutlookNight,
+) -> String {
+    let mut name = format!("{:>6}", short_date(date));
+    if with_year {
+        let _ = write!(name, " {}", year_words(date.year()));
+    }
+    let sun = |kind: HorizonKind| night.of_sun(kind).map(|event| clock.time(event.instant));
+    let subject = |kind: HorizonKind| {
+        let event = night.of_subject(kind);
+        event.map_or_else(
+            || String::from("\u{2013}"),
+            |event| clock.time(event.instant),
+        )
     };
-    let sunset = of(HorizonKind::Set, Body::Sun).unwrap_or_else(|| String::from("none"));
-    let dark = of(HorizonKind::NauticalDusk, Body::Sun).unwrap_or_else(|| String::from("never"));
-    let subject =
-        |kind: HorizonKind| of(kind, Body::Mars).unwrap_or_else(|| String::from("\u{2013}"));
+    let sunset = sun(HorizonKind::Set).unwrap_or_else(|| String::from("none"));
+    let dark = sun(HorizonKind::NauticalDusk).unwrap_or_else(|| String::from("never"));
     let (transit, altitude) = night.of_subject(HorizonKind::UpperTransit).map_or_else(
         || (String::from("\u{2013}"), String::from("\u{2013}")),
         |transit| {
@@ -315,8 +322,7 @@ fn evening_row(clock: &LocalClock<'_>, date: CivilDate, night: &OutlookNight) ->
         },
     );
     format!(
-        "{:<12}{sunset:>9}{dark:>10}{:>9}{transit:>14}{altitude:>9}{:>9}\n",
-        format!("{:>6}", short_date(date)),
+        "{name:<12}{sunset:>9}{dark:>10}{:>9}{transit:>14}{altitude:>9}{:>9}\n",
         subject(HorizonKind::Rise),
         subject(HorizonKind::Set)
     )

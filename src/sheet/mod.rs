@@ -1,6 +1,7 @@
 //! What is handed out: charts and tables as files, and the brief. A scene becomes SVG or PNG; both look alike.
 
 mod brief;
+mod font_subset;
 mod png;
 mod season_sheet;
 mod strip_words;

@@ -1,10 +1,12 @@
-//! A scene as SVG 1.1 text, in points, with the fonts it uses inside.
+//! A scene as SVG 1.1 text, in points, with what it uses of the fonts inside.
 //!
 //! Source of the format: W3C Recommendation "Scalable Vector Graphics (SVG) 1.1"; base64 of RFC 4648.
 
-use std::collections::BTreeSet;
+use std::borrow::Cow;
+use std::collections::{BTreeMap, BTreeSet};
 use std::fmt::Write;
 
+use super::font_subset;
 use crate::chart::{
     self, Font, Label, Layer, Paint, Palette, Point, Rgb, Role, Run, Scene, Shape, Stroke,
 };
@@ -82,17 +84,16 @@ fn base64(data: &[u8]) -> String {
     out
 }
 
-fn fonts_of(scene: &Scene) -> BTreeSet<Font> {
-    scene
-        .labels()
-        .flat_map(|(_, label)| {
-            label
-                .text
-                .chars()
-                .map(|character| chart::glyph(label.font, character).font)
-                .collect::<Vec<_>>()
-        })
-        .collect()
+/// The glyphs that the labels of a scene use, by font.
+fn glyphs_of(scene: &Scene) -> BTreeMap<Font, BTreeSet<u16>> {
+    let mut used: BTreeMap<Font, BTreeSet<u16>> = BTreeMap::new();
+    for (_, label) in scene.labels() {
+        for character in label.text.chars() {
+            let glyph = chart::glyph(label.font, character);
+            used.entry(glyph.font).or_default().insert(glyph.id.0);
+        }
+    }
+    used
 }
 
 impl Writer<'_> {
@@ -107,12 +108,14 @@ impl Writer<'_> {
             escaped(&scene.description),
         );
         put!(self, "<style>\n");
-        for font in fonts_of(scene) {
+        for (font, glyphs) in glyphs_of(scene) {
+            let file = font_subset::subset(font.data(), &glyphs)
+                .map_or(Cow::Borrowed(font.data()), Cow::Owned);
             put!(
                 self,
                 "@font-face {{ font-family: \"{}\"; src: url(\"data:font/ttf;base64,{}\") format(\"truetype\"); }}\n",
                 font.family(),
-                base64(font.data())
+                base64(&file)
             );
         }
         // No kerning and no ligatures: the widths are those that the labels were placed by.

@@ -29,7 +29,7 @@ impl Caution {
     pub const fn sentence(self) -> &'static str {
         match self {
             Caution::SeriesPlace => {
-                "outside 1550-2650 places come from analytic series, good to about half an arcminute"
+                "outside 1550-2650 places come from analytic series: good to 15 arcseconds from Mercury to Mars since 1000 BC, to two arcminutes for all planets since 2000 BC"
             }
             Caution::MagnitudeOutsideRange => {
                 "magnitude outside the range its formula was made for"

@@ -182,7 +182,7 @@ struct Edge {
 }
 
 /// How far a direction (ICRS) may move without crossing a boundary: a lower bound on the distance to the nearest edge, at
-/// least 0.7 times the distance itself, 0 on an edge.
+/// least 0.7 times the distance itself, 0 on an edge, and never more than 10 degrees.
 #[must_use]
 pub fn clearance(icrs: Vec3) -> Angle {
     static EDGES: OnceLock<Vec<Edge>> = OnceLock::new();
@@ -204,7 +204,7 @@ pub fn clearance(icrs: Vec3) -> Angle {
     let here = B1875_FROM_ICRS * icrs;
     let (ra, dec) = (here.longitude().degrees(), here.latitude().degrees());
     let cos_dec = libm::hypot(here.x, here.y);
-    let mut nearest = 180.0_f64;
+    let mut nearest = 10.0_f64;
     for edge in edges {
         let across = (edge.from_dec - dec).max(dec - edge.to_dec).max(0.0);
         if across >= nearest {
@@ -218,8 +218,13 @@ pub fn clearance(icrs: Vec3) -> Angle {
         } else {
             (past - width).min(360.0 - past)
         };
+        let off = off.min(90.0);
+        // The sine of an angle up to 90 degrees is at least its share of 90: most edges are passed over without a sine.
+        if off / 90.0 * cos_dec >= nearest.to_radians() {
+            continue;
+        }
         // The distance to an hour circle; behind the pole an edge is at least as far as the pole.
-        let along = Angle::from_degrees(off.min(90.0)).sin() * cos_dec;
+        let along = Angle::from_degrees(off).sin() * cos_dec;
         let along = Angle::from_radians(libm::asin(along.clamp(0.0, 1.0))).degrees();
         nearest = nearest.min(across.max(along));
     }

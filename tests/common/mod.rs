@@ -1,5 +1,8 @@
 //! Reading reference tables: lines that start with `#` are comments, the first other line names the columns.
 
+// Each test file uses its own part of this.
+#![allow(dead_code)]
+
 use std::collections::HashMap;
 
 use loopwright::sky::Tt;

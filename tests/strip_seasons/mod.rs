@@ -65,6 +65,11 @@ fn kind(word: &str) -> EventKind {
 
 /// Reads a season.
 pub fn season(name: &str) -> Season {
+    read(name, text_of(name))
+}
+
+/// Reads a season from the text of such a file.
+pub fn read(name: &str, file: &str) -> Season {
     let number = |word: &str| -> f64 { word.parse().unwrap_or_else(|_| panic!("{name}: {word}")) };
     let matrix = |words: &[&str]| {
         let n: Vec<f64> = words.iter().map(|word| number(word)).collect();
@@ -74,7 +79,7 @@ pub fn season(name: &str) -> Season {
     let (mut ecliptic, mut equatorial) = (Mat3::IDENTITY, Mat3::IDENTITY);
     let mut tracks: Vec<Track> = Vec::new();
     let mut events = Vec::new();
-    for line in text_of(name).lines().filter(|line| !line.starts_with('#')) {
+    for line in file.lines().filter(|line| !line.starts_with('#')) {
         let words: Vec<&str> = line.split(',').collect();
         match words[0] {
             "subject" => subject = words[1].parse().unwrap(),

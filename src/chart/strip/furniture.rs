@@ -86,7 +86,7 @@ fn write(scene: &mut Scene, id: MarkId, label: Label) {
     scene.add(id, Layer::Frame, Shape::Label(label));
 }
 
-/// The ecliptic across a row: a hairline with a tick at every degree or five.
+/// The ecliptic across a row: a hairline with a tick at every piece of the edge.
 pub(super) fn ecliptic(scene: &mut Scene, row: &StripRow) {
     let frame = row.frame;
     let y = row.point(row.longitude, 0.0).y;
@@ -101,12 +101,12 @@ pub(super) fn ecliptic(scene: &mut Scene, row: &StripRow) {
         Point::new(frame.right, y),
         Stroke::of(Role::Hairline, 0.5),
     );
-    let step = if row.scale >= 6.0 { 1 } else { 5 };
-    for degree in degrees(row.longitude, row.half_length(), step) {
-        let x = row.point(f64::from(degree), 0.0).x;
-        let reach = match degree.rem_euclid(10) {
-            0 => 3.0,
-            5 => 2.0,
+    let half = row.half_length().min(180.0);
+    for minute in multiples(row.longitude, half, step(row.scale, TICK_ROOM, &PIECES)) {
+        let x = edge_x(row, degrees(minute), half);
+        let reach = match minute {
+            minute if minute % 600 == 0 => 3.0,
+            minute if minute % 300 == 0 => 2.0,
             _ => 1.1,
         };
         line(
@@ -120,20 +120,50 @@ pub(super) fn ecliptic(scene: &mut Scene, row: &StripRow) {
     }
 }
 
-/// Whole degrees at a step within `half` of a middle.
-fn degrees(middle: f64, half: f64, step: i32) -> impl Iterator<Item = i32> {
-    let step_f = f64::from(step);
-    let first = ((middle - half) / step_f).ceil() as i32;
-    let last = ((middle + half) / step_f).floor() as i32;
+/// Lengths of the light and dark pieces of a measured edge, arcminutes.
+const PIECES: [i32; 5] = [10, 30, 60, 300, 600];
+/// Steps from number to number, arcminutes.
+const NUMBERS: [i32; 6] = [30, 60, 120, 300, 600, 1800];
+/// Least distance between ticks of the ecliptic, between ends of pieces, and between numbers along and up the edge,
+/// points.
+const TICK_ROOM: f64 = 5.5;
+const PIECE_ROOM: f64 = 14.0;
+const NUMBER_ROOM: f64 = 55.0;
+const NUMBER_ROOM_UP: f64 = 26.0;
+
+/// The shortest step that takes at least so many points.
+fn step(scale: f64, room: f64, steps: &[i32]) -> i32 {
+    steps
+        .iter()
+        .copied()
+        .find(|step| degrees(*step) * scale >= room)
+        .or(steps.last().copied())
+        .unwrap_or(600)
+}
+
+fn degrees(minutes: i32) -> f64 {
+    f64::from(minutes) / 60.0
+}
+
+/// Multiples of a step within `half` degrees of a middle, arcminutes.
+fn multiples(middle: f64, half: f64, step: i32) -> impl Iterator<Item = i32> {
+    let length = degrees(step);
+    let first = ((middle - half) / length).ceil() as i32;
+    let last = ((middle + half) / length).floor() as i32;
     (first..=last).map(move |number| number * step)
 }
 
-/// The measured edge of a row: a frame of light and dark degrees, numbers below and at the left.
+/// A number of degrees along an edge: whole or with a half.
+fn numbered(minutes: i32) -> String {
+    let decimals = usize::from(minutes % 60 != 0);
+    format!("{:.decimals$}°", degrees(minutes))
+}
+
+/// The measured edge of a row: a frame of light and dark pieces, numbers below and at the sides.
 pub(super) fn edges(scene: &mut Scene, row: &StripRow) {
     let frame = row.frame;
     let outer = frame.grown(EDGE);
-    let whole_circle = row.half_length() >= 180.0;
-    let step = if row.scale >= 6.0 { 1 } else { 5 };
+    let piece = step(row.scale, PIECE_ROOM, &PIECES);
     let block = |scene: &mut Scene, rect: Rect| {
         scene.add(
             MarkId::Scale,
@@ -145,21 +175,21 @@ pub(super) fn edges(scene: &mut Scene, row: &StripRow) {
             },
         );
     };
-    // Every other piece of the edge is dark, from an even multiple of the step to the next odd one.
+    // Every other piece of the edge is dark, from an even multiple of its length to the next odd one.
     let half = row.half_length().min(180.0);
-    for degree in degrees(row.longitude, half + f64::from(step), 2 * step) {
-        let a = edge_x(row, f64::from(degree), half);
-        let b = edge_x(row, f64::from(degree + step), half);
+    for minute in multiples(row.longitude, half + degrees(piece), 2 * piece) {
+        let a = edge_x(row, degrees(minute), half);
+        let b = edge_x(row, degrees(minute + piece), half);
         let (left, right) = (a.min(b).max(frame.left), a.max(b).min(frame.right));
         if left < right {
             block(scene, Rect::new(left, outer.top, right, frame.top));
             block(scene, Rect::new(left, frame.bottom, right, outer.bottom));
         }
     }
-    for degree in degrees(row.latitude, row.half_height() + f64::from(step), 2 * step) {
-        let a = row.point(row.longitude, f64::from(degree)).y;
-        let b = row.point(row.longitude, f64::from(degree + step)).y;
-        let (top, bottom) = (b.max(frame.top), a.min(frame.bottom));
+    for minute in multiples(row.latitude, row.half_height() + degrees(piece), 2 * piece) {
+        let a = row.point(row.longitude, degrees(minute)).y;
+        let b = row.point(row.longitude, degrees(minute + piece)).y;
+        let (top, bottom) = (a.min(b).max(frame.top), a.max(b).min(frame.bottom));
         if top < bottom {
             block(scene, Rect::new(outer.left, top, frame.left, bottom));
             block(scene, Rect::new(frame.right, top, outer.right, bottom));
@@ -177,39 +207,32 @@ pub(super) fn edges(scene: &mut Scene, row: &StripRow) {
             },
         );
     }
-    let number_step = if row.scale >= 14.0 { 5 } else { 10 };
-    for degree in degrees(row.longitude, half, number_step) {
-        let x = edge_x(row, f64::from(degree), half);
-        let label = Label::new(
+    let number = |words: String, at: Point, align: Align| {
+        Label::new(at, words, Font::Sans, 7.2, Role::FaintInk).aligned(align)
+    };
+    for minute in multiples(row.longitude, half, step(row.scale, NUMBER_ROOM, &NUMBERS)) {
+        let x = edge_x(row, degrees(minute), half);
+        let label = number(
+            numbered(minute.rem_euclid(360 * 60)),
             Point::new(x, outer.bottom + 8.2),
-            format!("{}°", degree.rem_euclid(360)),
-            Font::Sans,
-            7.2,
-            Role::FaintInk,
-        )
-        .aligned(Align::Middle);
+            Align::Middle,
+        );
         let bounds = label.bounds();
         // The last degree of a whole circle is its first one again.
-        let doubled = whole_circle && f64::from(degree) - row.longitude >= 180.0;
+        let doubled = degrees(minute) - row.longitude >= 180.0;
         if outer.left <= bounds.left && bounds.right <= outer.right && !doubled {
             write(scene, MarkId::Scale, label);
         }
     }
-    let number_step = if row.scale >= 14.0 { 2 } else { 5 };
-    for degree in degrees(row.latitude, row.half_height(), number_step) {
-        let y = row.point(row.longitude, f64::from(degree)).y;
+    let up = step(row.scale, NUMBER_ROOM_UP, &NUMBERS);
+    for minute in multiples(row.latitude, row.half_height(), up) {
+        let y = row.point(row.longitude, degrees(minute)).y;
+        let words = signed(degrees(minute), usize::from(minute % 60 != 0)) + "°";
         for (x, align) in [
             (outer.left - 3.0, Align::End),
             (outer.right + 3.0, Align::Start),
         ] {
-            let label = Label::new(
-                Point::new(x, y + 2.5),
-                format!("{}°", signed(f64::from(degree), 0)),
-                Font::Sans,
-                7.2,
-                Role::FaintInk,
-            )
-            .aligned(align);
+            let label = number(words.clone(), Point::new(x, y + 2.5), align);
             let bounds = label.bounds();
             if outer.top <= bounds.top && bounds.bottom <= outer.bottom {
                 write(scene, MarkId::Scale, label);
@@ -623,10 +646,15 @@ fn star_sizes(scale: f64) -> Entry {
 fn compass(east_left: bool) -> Entry {
     let mut scene = Scene::default();
     let (arm, tip) = (15.0, 3.0);
-    let foot = Point::new(if east_left { 26.0 } else { 12.0 }, SECOND_Y - 1.5);
+    // Half a turn for the southern sky: east to the right, north down.
+    let foot = if east_left {
+        Point::new(26.0, SECOND_Y - 1.5)
+    } else {
+        Point::new(12.0, SECOND_Y - 13.5)
+    };
     let side = if east_left { -1.0 } else { 1.0 };
     let stroke = Stroke::of(Role::FaintInk, 0.8);
-    let north = foot.moved(0.0, -arm);
+    let north = foot.moved(0.0, side * arm);
     let east = foot.moved(side * arm, 0.0);
     scene.add(
         MarkId::Sheet,
@@ -637,7 +665,7 @@ fn compass(east_left: bool) -> Entry {
         },
     );
     for (end, back) in [
-        (north, Point::new(0.0, 1.0)),
+        (north, Point::new(0.0, -side)),
         (east, Point::new(-side, 0.0)),
     ] {
         let across = back.turned();
@@ -659,7 +687,11 @@ fn compass(east_left: bool) -> Entry {
     write(
         &mut scene,
         MarkId::Sheet,
-        caption(north.moved(0.0, -4.5), "north").aligned(Align::Middle),
+        caption(
+            north.moved(0.0, if east_left { -4.5 } else { 9.5 }),
+            "north",
+        )
+        .aligned(Align::Middle),
     );
     let label = caption(east.moved(side * 4.5, 2.6), "east").aligned(if east_left {
         Align::End

@@ -59,7 +59,9 @@ impl StripRow {
         let east = self.east(longitude_degrees) * self.scale;
         let north = (latitude_degrees - self.latitude) * self.scale;
         let middle = self.frame.centre();
-        middle.moved(if self.east_left { -east } else { east }, -north)
+        // Turned round is half a turn, not a mirror image: with east to the right south is up.
+        let turn = if self.east_left { -1.0 } else { 1.0 };
+        middle.moved(turn * east, turn * north)
     }
 
     /// Where an ecliptic direction lies on the sheet; it may be outside the frame.
@@ -75,12 +77,13 @@ impl StripRow {
     #[must_use]
     pub fn place(&self, point: Point) -> (f64, f64) {
         let from = point.minus(self.frame.centre());
-        let east = if self.east_left { -from.x } else { from.x } / self.scale;
+        let turn = if self.east_left { -1.0 } else { 1.0 };
+        let east = turn * from.x / self.scale;
         (
             Angle::from_degrees(self.longitude + east)
                 .wrapped()
                 .degrees(),
-            self.latitude - from.y / self.scale,
+            self.latitude + turn * from.y / self.scale,
         )
     }
 
