@@ -389,7 +389,7 @@ fn strip_and_overlay_join_at_their_levels() {
     for mark in &base.marks {
         match mark.id {
             MarkId::Star(_) | MarkId::Constellation(_) => {
-                assert_eq!(Level::of_strip(mark), Level::Stars);
+                assert_eq!(Level::of_strip(mark), Level::Paper);
             }
             MarkId::Track(_) => assert_eq!(Level::of_strip(mark), Level::Paths),
             _ => {}

@@ -188,7 +188,7 @@ pub struct OverlayStyle<'a> {
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Level {
     /// The strip's paper, its stars and constellations with their names: what drowns in twilight.
-    Stars,
+    Paper,
     /// The overlay's dusk and glare.
     Shade,
     /// The strip's scale, paths and their names.
@@ -207,7 +207,7 @@ impl Level {
     pub const fn of_strip(mark: &Mark) -> Self {
         match (mark.layer, mark.id) {
             (Layer::Sheet | Layer::Plate | Layer::Boundaries | Layer::Stars, _)
-            | (_, MarkId::Star(_) | MarkId::Constellation(_)) => Level::Stars,
+            | (_, MarkId::Star(_) | MarkId::Constellation(_)) => Level::Paper,
             (Layer::Frame, _)
             | (
                 Layer::Leaders | Layer::Labels | Layer::Marks,

@@ -682,7 +682,7 @@ impl Painter<'_> {
         let width = (layout.night_width() * 0.3).clamp(0.3, 1.25);
         // Where threads would run into each other the field alone speaks.
         let is_fine = layout.night_width() < 2.0;
-        let field = if is_fine { 0.75 } else { 0.2 };
+        let field = if is_fine { 0.55 } else { 0.2 };
         for chain in &fields {
             let paints: Vec<Paint> = (0..chain.hours.len())
                 .map(|offset| {

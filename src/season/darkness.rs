@@ -1,9 +1,6 @@
 //! How dark every night of a season is, and when the subject stands in the open: what a picture of the season needs.
 //!
-//! The ephemeris is asked every six hours; a polynomial of the fourth degree through the five answers of a night and the
-//! sidereal time give altitudes anywhere between, with the parallax of the site put in. Against the full chain of
-//! [`Sky::observer`] they differ by less than 2" for Sun and planets and 5" for the Moon. Times are TT, found to 3 s;
-//! altitudes of the Sun true, of its centre.
+//! Altitudes come from [`SiteTracks`]. Times are TT, found to 3 s; altitudes of the Sun true, of its centre.
 //!
 //! "In view" is a plain test of altitude, skyline and the Sun's depth by [`Conditions`]; hours, weekdays and Moon do not
 //! enter, and what lasts less than two minutes, an opening or a chimney
@@ -11,20 +8,17 @@
 //! ([`Darkness::set_in_view`]).
 
 use super::conditions::Conditions;
-use super::moment::night_at;
+use super::site_tracks::{SiteTracks, Which};
 use super::types::Span;
-use crate::sky::frames::apparent_sidereal_time;
 use crate::sky::place::{AU_KM, Sky, SkyError};
 use crate::sky::refraction::apparent_from_true;
 use crate::sky::skyline::Cursor;
-use crate::sky::{Angle, Body, Site, Skyline, Tt, Vec3};
+use crate::sky::{Angle, Body, Site, Skyline, Tt};
 
 /// Samples of a night, one every ten minutes, both ends included.
 const SAMPLES: usize = 145;
 /// Parts of the time between samples in which the skyline is looked at: 2 minutes, in which the sky turns by half a degree.
 const FINER: usize = 5;
-/// Questions to the ephemeris in a night, both ends included.
-const NODES: usize = 5;
 /// Where a stretch begins and ends is found to this, days.
 const TOLERANCE_DAYS: f64 = 3.0 / 86_400.0;
 
@@ -149,244 +143,128 @@ pub fn darkness(
     subject: Body,
     span: Span,
 ) -> Result<Darkness, SkyError> {
-    let mut nights = Vec::new();
     // 18h of the first civil day, whatever the zone, lies in the night that its evening begins.
-    let mut night = night_at(sky, place.site, span.from.plus_days(0.75));
-    let mut cursor = place.skyline.cursor();
-    let mut opening = None;
-    while night.from < span.to {
-        let track = NightTrack::new(sky, place.site, subject, night, opening)?;
-        nights.push(track.light(place, &mut cursor));
-        opening = track.nodes.last().copied();
-        // The end of one night is the beginning of the next, to the bit.
-        night = Span {
-            from: night.to,
-            to: night_at(sky, place.site, night.to.plus_days(0.5)).to,
-        };
-    }
-    Ok(Darkness { subject, nights })
+    let evenings = Span {
+        from: span.from.plus_days(0.75),
+        to: span.to,
+    };
+    let tracks = SiteTracks::new(sky, place.site, subject, evenings)?;
+    Ok(darkness_along(&tracks, place))
 }
 
-/// What the ephemeris says at one instant: au on the true equator and equinox of date, from the Earth's centre.
-#[derive(Clone, Copy)]
-struct Node {
-    sun: Vec3,
-    moon: Vec3,
-    subject: Vec3,
-    /// Local apparent sidereal time, 0 to a turn.
-    sidereal: f64,
-    moon_lit: f64,
-}
-
-impl Node {
-    fn new(sky: &Sky, site: &Site, subject: Body, instant: Tt) -> Result<Self, SkyError> {
-        let vantage = sky.geocentre(instant)?;
-        let of_date = vantage.frame().equatorial_from_icrs;
-        let at = |body: Body| -> Result<Vec3, SkyError> {
-            let place = vantage.place(body)?;
-            Ok(of_date * (place.apparent * place.distance_au))
-        };
-        let ut1 = sky.tables().ut1_from_tt(instant);
-        let sidereal = apparent_sidereal_time(ut1, instant, vantage.frame()) + site.longitude;
-        Ok(Node {
-            sun: at(Body::Sun)?,
-            moon: at(Body::Moon)?,
-            subject: at(subject)?,
-            sidereal: sidereal.wrapped().radians(),
-            moon_lit: vantage.place(Body::Moon)?.geometry().lit_fraction(),
-        })
+/// The same along tracks that are known already.
+#[must_use]
+pub fn darkness_along(tracks: &SiteTracks, place: Place<'_>) -> Darkness {
+    let mut looker = Looker {
+        tracks,
+        place,
+        cursor: place.skyline.cursor(),
+    };
+    Darkness {
+        subject: tracks.subject(),
+        nights: tracks
+            .night_spans()
+            .iter()
+            .map(|night| looker.light(night.span))
+            .collect(),
     }
 }
 
-/// A night in which altitudes cost little.
-struct NightTrack {
-    span: Span,
-    nodes: [Node; NODES],
-    /// Sidereal time gained over the night, radians.
-    turn: f64,
-    sin_latitude: f64,
-    cos_latitude: f64,
-    axial_au: f64,
-    polar_au: f64,
+struct Looker<'a> {
+    tracks: &'a SiteTracks,
+    place: Place<'a>,
+    cursor: Cursor<'a>,
 }
 
-/// An instant of a night.
-struct Instant<'a> {
-    track: &'a NightTrack,
-    weights: [f64; NODES],
-    sin: f64,
-    cos: f64,
-}
-
-impl NightTrack {
-    fn new(
-        sky: &Sky,
-        site: &Site,
-        subject: Body,
-        span: Span,
-        opening: Option<Node>,
-    ) -> Result<Self, SkyError> {
-        let node = |index: usize| {
-            let days = span.days() * index as f64 / (NODES - 1) as f64;
-            Node::new(sky, site, subject, span.from.plus_days(days))
-        };
-        let first = match opening {
-            Some(node) => node,
-            None => node(0)?,
-        };
-        let nodes = [first, node(1)?, node(2)?, node(3)?, node(4)?];
-        let [.., last] = nodes;
-        // A day of the Sun is a turn and a little more among the stars.
-        let gained = last.sidereal - first.sidereal;
-        let turn = std::f64::consts::TAU + Angle::from_radians(gained).signed().radians();
-        let (sin_latitude, cos_latitude) = site.latitude.sin_cos();
-        let (axial_au, polar_au) = site.geocentric_au();
-        Ok(NightTrack {
-            span,
-            nodes,
-            turn,
-            sin_latitude,
-            cos_latitude,
-            axial_au,
-            polar_au,
-        })
-    }
-
-    /// At `share` (0 to 1) of the night.
-    fn at(&self, share: f64) -> Instant<'_> {
-        let [first, ..] = self.nodes;
-        let (sin, cos) = libm::sincos(first.sidereal + self.turn * share);
-        // Lagrange's weights for nodes at 0 to 4.
-        let x = share * (NODES - 1) as f64;
-        let (a, b, c, d, e) = (x, x - 1.0, x - 2.0, x - 3.0, x - 4.0);
-        Instant {
-            track: self,
-            weights: [
-                b * c * d * e / 24.0,
-                a * c * d * e / -6.0,
-                a * b * d * e / 4.0,
-                a * b * c * e / -6.0,
-                a * b * c * d / 24.0,
-            ],
-            sin,
-            cos,
-        }
-    }
-
-    fn light(&self, place: Place<'_>, cursor: &mut Cursor<'_>) -> NightLight {
-        let days = |share: f64| self.span.from.plus_days(share * self.span.days());
+impl Looker<'_> {
+    fn light(&mut self, span: Span) -> NightLight {
+        let days = |share: f64| span.from.days() + share * span.days();
         let mut sun_altitudes = Vec::with_capacity(SAMPLES);
         let mut moon = Stretches::default();
         let mut view = Stretches::default();
         for sample in 0..SAMPLES {
             let share = sample as f64 / (SAMPLES - 1) as f64;
-            let instant = self.at(share);
-            sun_altitudes.push(Angle::from_radians(instant.sun_altitude()));
-            moon.sample(share, instant.moon_over(), |share| {
-                self.at(share).moon_over()
+            let sun = self.altitude(Which::Sun, days(share));
+            sun_altitudes.push(Angle::from_radians(sun));
+            let tracks = self.tracks;
+            moon.sample(share, moon_over(tracks, days(share)), |share| {
+                moon_over(tracks, days(share))
             });
             // Chimneys are narrow: a finer look wherever it could be dark with the subject up.
-            let steps = if instant.may_be_in_view() { FINER } else { 1 };
+            let may_be = sun < 0.05 && self.altitude(Which::Subject, days(share)) > -0.15;
+            let steps = if may_be { FINER } else { 1 };
             for step in 0..steps {
                 let share = (sample as f64 + step as f64 / steps as f64) / (SAMPLES - 1) as f64;
                 if share > 1.0 {
                     break;
                 }
-                let over = self.at(share).in_view_by(place, cursor);
-                view.sample(share, over, |share| {
-                    self.at(share).in_view_by(place, cursor)
-                });
+                let over = self.in_view_by(days(share));
+                view.sample(share, over, |share| self.in_view_by(days(share)));
             }
         }
-        let [_, _, middle, ..] = self.nodes;
         let spans = |stretches: Stretches| {
             stretches
                 .closed()
                 .into_iter()
                 .map(|(from, to)| Span {
-                    from: days(from),
-                    to: if to >= 1.0 { self.span.to } else { days(to) },
+                    from: Tt::from_days(days(from)),
+                    to: if to >= 1.0 {
+                        span.to
+                    } else {
+                        Tt::from_days(days(to))
+                    },
                 })
                 .collect()
         };
+        let lit = self
+            .tracks
+            .between(days(0.5))
+            .map_or(0.0, |between| between.moon_lit_fraction());
         NightLight {
-            span: self.span,
+            span,
             sun_altitudes,
             moon_up: spans(moon),
-            moon_lit: middle.moon_lit,
+            moon_lit: lit,
             in_view: spans(view),
         }
     }
-}
 
-impl Instant<'_> {
-    /// On local axes (east, north, up), au from the site.
-    fn local(&self, of: impl Fn(&Node) -> Vec3) -> Vec3 {
-        let track = self.track;
-        let v = track
-            .nodes
-            .iter()
-            .zip(self.weights)
-            .fold(Vec3::ZERO, |sum, (node, weight)| sum + of(node) * weight);
-        let meridian = self.cos * v.x + self.sin * v.y - track.axial_au;
-        let east = self.cos * v.y - self.sin * v.x;
-        let polar = v.z - track.polar_au;
-        Vec3::new(
-            east,
-            track.cos_latitude * polar - track.sin_latitude * meridian,
-            track.cos_latitude * meridian + track.sin_latitude * polar,
-        )
-    }
-
-    /// Radians.
-    fn sun_altitude(&self) -> f64 {
-        altitude(self.local(|node| node.sun))
-    }
-
-    /// The Moon's altitude above that at which it rises and sets, radians.
-    fn moon_over(&self) -> f64 {
-        let local = self.local(|node| node.moon);
-        let semidiameter = Body::Moon.radius_km() / AU_KM / local.norm();
-        altitude(local) + semidiameter - MOON_LIMB.radians()
-    }
-
-    /// Whether the subject is up, or nearly, and the Sun low, or nearly, so that a closer look is worth its cost.
-    fn may_be_in_view(&self) -> bool {
-        self.sun_altitude() < 0.05 && altitude(self.local(|node| node.subject)) > -0.15
+    /// True altitude of the centre, radians.
+    fn altitude(&self, which: Which, days: f64) -> f64 {
+        self.tracks.standing(which, days).altitude().radians()
     }
 
     /// Not negative when the subject is in view; radians, but only the sign is meant.
-    fn in_view_by(&self, place: Place<'_>, cursor: &mut Cursor<'_>) -> f64 {
+    fn in_view_by(&mut self, days: f64) -> f64 {
         /// More than refraction ever lifts.
         const MOST_LIFT: f64 = 0.02;
-        let conditions = place.conditions;
-        let dark = conditions.sun_below.radians() - self.sun_altitude();
+        let conditions = self.place.conditions;
+        let dark = conditions.sun_below.radians() - self.altitude(Which::Sun, days);
         if dark < 0.0 {
             return dark;
         }
-        let local = self.local(|node| node.subject);
-        let true_altitude = altitude(local);
-        let over_least = true_altitude - conditions.least_altitude.radians();
+        let subject = self.tracks.standing(Which::Subject, days);
+        let true_altitude = subject.altitude();
+        let over_least = (true_altitude - conditions.least_altitude).radians();
         if over_least < -MOST_LIFT {
             return over_least;
         }
-        let azimuth = Angle::from_radians(libm::atan2(local.x, local.y));
-        let skyline = cursor.altitude_at(azimuth) + conditions.clearance;
+        let skyline = self.cursor.altitude_at(subject.azimuth()) + conditions.clearance;
         let least = skyline.radians().max(conditions.least_altitude.radians());
-        let over = true_altitude - least;
+        let over = true_altitude.radians() - least;
         if !(-MOST_LIFT..0.0).contains(&over) {
             return over;
         }
-        let apparent = apparent_from_true(Angle::from_radians(true_altitude), &place.site.air);
-        apparent.radians() - least
+        apparent_from_true(true_altitude, &self.place.site.air).radians() - least
     }
 }
 
-/// Of the Moon's upper limb when it rises or sets, as in [`super::horizon::Threshold::RiseSet`].
-const MOON_LIMB: Angle = Angle::from_degrees(-34.0 / 60.0);
-
-fn altitude(local: Vec3) -> f64 {
-    libm::asin((local.z / local.norm()).clamp(-1.0, 1.0))
+/// The Moon's altitude above that at which it rises and sets, as in [`super::horizon::Threshold::RiseSet`], radians.
+fn moon_over(tracks: &SiteTracks, days: f64) -> f64 {
+    const LIMB: Angle = Angle::from_degrees(-34.0 / 60.0);
+    let moon = tracks.standing(Which::Moon, days);
+    let semidiameter = Body::Moon.radius_km() / AU_KM / moon.distance_au;
+    moon.altitude().radians() + semidiameter - LIMB.radians()
 }
 
 /// Collects the stretches in which a sampled value is not negative.
