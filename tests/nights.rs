@@ -785,3 +785,18 @@ fn a_night_has_the_date_of_its_evening() {
     // 12h - 179/15 h = 00:04 UTC.
     assert_at(&sky, night.span.from, "2027-02-19T00:04:00Z", 1.0);
 }
+
+#[test]
+fn limits_are_written_as_they_were_set() {
+    let sun = |limit: f64, end: End| {
+        let limit = Angle::from_degrees(limit);
+        EdgeCause::SunAltitude { limit }.words(end)
+    };
+    assert_eq!(sun(-6.0, End::Start), "end of civil twilight");
+    assert_eq!(sun(-12.0, End::Finish), "nautical twilight");
+    assert_eq!(sun(-6.5, End::Start), "Sun 6.5 deg down");
+    assert_eq!(sun(3.0, End::Start), "Sun 3 deg up");
+    let limit = Angle::from_degrees(7.5);
+    let words = EdgeCause::LeastAltitude { limit }.words(End::Start);
+    assert_eq!(words, "rises above 7.5 deg");
+}

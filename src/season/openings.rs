@@ -87,8 +87,8 @@ pub struct NightRules {
     pub sun_distance: Angle,
     /// How far the skyline may be wrong.
     pub skyline_error: Angle,
-    /// With an eye, the best moment of a spell is where the subject stands out most to it, which for planets near the Sun is
-    /// well after they are highest; without, where it is highest.
+    /// With an eye, the best moment of a spell of Mercury or Venus is where the planet stands out most to it, which in the
+    /// evening is well after it is highest; without, and for other subjects, where it is highest.
     pub best_for: Option<Viewer>,
 }
 
