@@ -235,7 +235,7 @@ impl Openings {
     fn push_window(&mut self, tracks: &SiteTracks, stretch: Stretch<Cause>) {
         let first = self.points.len();
         self.points.push(point(tracks, stretch.from));
-        let start = tracks.first_day();
+        let start = tracks.start_days();
         let mut k = ((stretch.from - start) / SAMPLE_STEP).floor() + 1.0;
         while start + k * SAMPLE_STEP < stretch.to {
             self.points.push(point(tracks, start + k * SAMPLE_STEP));
@@ -282,7 +282,7 @@ impl<'a> Sets<'a> {
     }
 
     fn everything(&self, cause: Cause) -> Vec<Stretch<Cause>> {
-        let from = self.tracks.first_day();
+        let from = self.tracks.start_days();
         let steps = self.tracks.sampled.sun.len().saturating_sub(1);
         vec![Stretch {
             from,
@@ -300,7 +300,7 @@ impl<'a> Sets<'a> {
         f: impl Fn(f64) -> f64,
     ) -> Vec<Stretch<Cause>> {
         let samples = Samples {
-            from: self.tracks.first_day(),
+            from: self.tracks.start_days(),
             step: SAMPLE_STEP,
             values,
         };
@@ -397,7 +397,7 @@ impl<'a> Sets<'a> {
                 rule.unless_lit_below - lit
             };
             let values: Vec<f64> = (0..sampled.moon.len())
-                .map(|k| spare(tracks.first_day() + k as f64 * SAMPLE_STEP))
+                .map(|k| spare(tracks.start_days() + k as f64 * SAMPLE_STEP))
                 .collect();
             let thin = self.where_not_negative(&values, LIT_CURVATURE, Cause::MoonLit, spare);
             allowed = union(&allowed, &thin);

@@ -33,8 +33,7 @@ struct Motion {
 impl Motion {
     fn apparent(place: &Place) -> Motion {
         let vector = place.apparent * place.distance_au;
-        let rate =
-            place.apparent_rate() * place.distance_au + place.apparent * place.distance_rate();
+        let rate = place.apparent_rate * place.distance_au + place.apparent * place.distance_rate();
         Motion::of(place, vector, rate)
     }
 
@@ -358,7 +357,7 @@ impl SiteTracks {
     }
 
     /// Instant of the first sample.
-    pub(super) fn first_day(&self) -> f64 {
+    pub(super) fn start_days(&self) -> f64 {
         self.from
     }
 
