@@ -632,8 +632,8 @@ impl eframe::App for Window {
         let whole = ui.available_size();
         let scale = self.scale(whole);
         self.dress(&ctx, scale);
-        let ground = colour(colours.colour(Role::Ground));
-        let edge = |left: f32, right: f32, top: f32, bottom: f32| Frame::NONE.fill(ground).inner_margin(Margin {
+        // The window is cleared to the ground: no panel fills it a second time.
+        let edge = |left: f32, right: f32, top: f32, bottom: f32| Frame::NONE.inner_margin(Margin {
             left: left as i8,
             right: right as i8,
             top: top as i8,

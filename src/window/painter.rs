@@ -9,7 +9,7 @@ use std::sync::Arc;
 use egui::epaint::{TessellationOptions, Tessellator};
 use egui::{Color32, FontId, Mesh, Pos2, Shape as EguiShape, TextFormat};
 
-use super::polygon::{convex, trapezoids, triangles_within};
+use super::polygon::{convex, quadrangles, trapezoids, triangles_within};
 use super::theme::{colour, family};
 use crate::chart::{
     Align, Label, Layer, Level, Mark, Paint, Palette, Point, Rect, RibbonPoint, Role, Run, Scene, Shape, Stop, Stroke,
@@ -124,6 +124,8 @@ impl Picture {
             }
             place = next;
             match &mark.shape {
+                // The window is the sheet.
+                Shape::Area { fill, .. } if mark.layer == Layer::Sheet && fill.role == Role::Ground => {}
                 Shape::Label(label) => {
                     pieces.push(Piece { level, is_still: next.1, what: What::Text(label.clone()) });
                 }
@@ -462,7 +464,7 @@ impl<'e> Brush<'e> {
                 self.tessellator.tessellate_shape(shape, &mut self.mesh);
             }
             rings => {
-                for [a, b, c, d] in trapezoids(rings, &[]) {
+                for [a, b, c, d] in quadrangles(rings) {
                     let corners = [a, b, c, d].map(|point| {
                         let (x, y) = placement.at_f64(point);
                         self.vertex(x, y, ink)

@@ -39,27 +39,71 @@ pub(super) fn trapezoids(rings: &[Vec<Point>], cuts: &[f64]) -> Vec<[Point; 4]> 
     heights.dedup();
 
     let mut pieces = Vec::new();
-    let mut waiting = edges.into_iter().peekable();
-    let mut active: Vec<Edge> = Vec::new();
+    let mut waiting = edges.into_iter().enumerate().peekable();
+    let mut active: Vec<(usize, Edge)> = Vec::new();
+    let mut open: Vec<Open> = Vec::new();
     for pair in heights.windows(2) {
         let &[upper, lower] = pair else { continue };
-        active.retain(|edge| edge.bottom.y > upper);
-        while let Some(edge) = waiting.next_if(|edge| edge.top.y <= upper) {
+        active.retain(|(_, edge)| edge.bottom.y > upper);
+        while let Some(edge) = waiting.next_if(|(_, edge)| edge.top.y <= upper) {
             active.push(edge);
         }
         let middle = (upper + lower) / 2.0;
-        active.sort_by(|a, b| a.x_at(middle).total_cmp(&b.x_at(middle)));
+        active.sort_by(|a, b| a.1.x_at(middle).total_cmp(&b.1.x_at(middle)));
+        let is_cut = cuts.contains(&upper);
+        let mut next = Vec::with_capacity(active.len() / 2);
         for sides in active.chunks_exact(2) {
             let &[left, right] = sides else { continue };
-            pieces.push([
-                Point::new(left.x_at(upper), upper),
-                Point::new(right.x_at(upper), upper),
-                Point::new(right.x_at(lower), lower),
-                Point::new(left.x_at(lower), lower),
-            ]);
+            // Between the same two edges a piece goes on, whatever happens elsewhere at this height.
+            let before = open.iter().find(|open| !is_cut && open.left.0 == left.0 && open.right.0 == right.0);
+            next.push(Open { left, right, upper: before.map_or(upper, |before| before.upper) });
         }
+        for ended in &open {
+            let goes_on = |next: &Open| {
+                next.left.0 == ended.left.0 && next.right.0 == ended.right.0 && next.upper == ended.upper
+            };
+            if !next.iter().any(goes_on) {
+                pieces.push(ended.closed(upper));
+            }
+        }
+        open = next;
+    }
+    if let Some(&last) = heights.last() {
+        pieces.extend(open.iter().map(|ended| ended.closed(last)));
     }
     pieces
+}
+
+/// A piece whose lower side is not known yet.
+#[derive(Clone, Copy, Debug)]
+struct Open {
+    left: (usize, Edge),
+    right: (usize, Edge),
+    upper: f64,
+}
+
+impl Open {
+    fn closed(&self, lower: f64) -> [Point; 4] {
+        [
+            Point::new(self.left.1.x_at(self.upper), self.upper),
+            Point::new(self.right.1.x_at(self.upper), self.upper),
+            Point::new(self.right.1.x_at(lower), lower),
+            Point::new(self.left.1.x_at(lower), lower),
+        ]
+    }
+}
+
+/// The inside of the rings in as few pieces as come of cutting it across or along.
+pub(super) fn quadrangles(rings: &[Vec<Point>]) -> Vec<[Point; 4]> {
+    let turned = |point: &Point| Point::new(point.y, point.x);
+    let across = trapezoids(rings, &[]);
+    let flipped: Vec<Vec<Point>> = rings.iter().map(|ring| ring.iter().map(turned).collect()).collect();
+    let along = trapezoids(&flipped, &[]);
+    if along.len() < across.len() {
+        along.iter().map(|piece| piece.map(|corner| turned(&corner))).collect()
+    } else {
+        across
+    }
 }
 
 /// Twice the area, positive where the corners run clockwise on a sheet with y down.
@@ -158,6 +202,20 @@ mod tests {
             let covered: f64 = pieces.iter().map(|piece| area(piece)).sum();
             assert!((covered - wanted).abs() < 1e-9, "{covered} {wanted}");
         }
+        let covered: f64 = quadrangles(&[comb, hole]).iter().map(|piece| area(piece)).sum();
+        assert!((covered - wanted).abs() < 1e-9, "{covered} {wanted}");
+    }
+
+    /// A band between two waves needs a piece for each step along it, not for each height.
+    #[test]
+    fn a_long_band_takes_few_pieces() {
+        let wave = |k: i32, lift: f64| Point::new(f64::from(k), lift + libm::sin(f64::from(k) * 0.37));
+        let mut band: Vec<Point> = (0..200).map(|k| wave(k, 0.0)).collect();
+        band.extend((0..200).rev().map(|k| wave(k, 5.0)));
+        let pieces = quadrangles(&[band.clone()]);
+        assert_eq!(pieces.len(), 199);
+        let covered: f64 = pieces.iter().map(|piece| area(piece)).sum();
+        assert!((covered - area(&band)).abs() < 1e-9);
     }
 
     #[test]

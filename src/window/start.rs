@@ -41,6 +41,8 @@ pub fn open(scenario: Scenario, path: Option<PathBuf>, now: Tt) -> Result<(), No
             .with_min_inner_size([900.0, 600.0])
             .with_icon(egui::IconData::default()),
         renderer: eframe::Renderer::Glow,
+        // Costs more than it shows where the processor draws.
+        dithering: false,
         ..eframe::NativeOptions::default()
     };
     // The window system's own library panics where a shared library is missing; that is no fault of the user's, and its
