@@ -34,6 +34,7 @@ mod track;
 mod types;
 pub mod visibility;
 pub mod weather;
+pub mod year;
 
 pub use compute::{next_season, season};
 pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
