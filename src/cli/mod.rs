@@ -8,8 +8,10 @@ mod events;
 mod new;
 mod places;
 mod progress;
+mod seasons;
 mod sheet;
 pub mod words;
+mod year;
 
 use std::ffi::OsString;
 use std::io;
@@ -51,6 +53,8 @@ enum Command {
     New(new::Options),
     Places(places::Options),
     Events(events::Options),
+    Year(year::Options),
+    Seasons(seasons::Options),
     Completions(completions::Options),
 }
 
@@ -85,6 +89,8 @@ pub enum CliError {
     Scenario(#[from] ScenarioError),
     #[error(transparent)]
     Plan(#[from] PlanError),
+    #[error(transparent)]
+    Year(#[from] crate::season::year::YearError),
     #[error(transparent)]
     Sheet(#[from] SheetError),
     #[error(transparent)]
@@ -131,6 +137,8 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(Command::New(options)) => new::run(options),
         Some(Command::Places(options)) => places::run(options),
         Some(Command::Events(options)) => events::run(options),
+        Some(Command::Year(options)) => year::run(options),
+        Some(Command::Seasons(options)) => seasons::run(options),
         Some(Command::Completions(options)) => completions::run(options),
     };
     match result {

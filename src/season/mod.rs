@@ -4,6 +4,7 @@
 
 pub mod advice;
 pub mod close;
+pub mod compare;
 mod compute;
 mod conditions;
 mod constellation_walk;

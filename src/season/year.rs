@@ -229,7 +229,9 @@ pub fn year(
     let mut rules = watch.rules.clone();
     rules.conditions.weekdays = Weekdays::ALL;
     let never_open = || YearError::NeverOpen { from, days };
-    let last = i32::try_from(days).ok().and_then(|days| days.checked_sub(1));
+    let last = i32::try_from(days)
+        .ok()
+        .and_then(|days| days.checked_sub(1));
     let to = from.plus_days(last.filter(|&last| last >= 0).ok_or_else(never_open)?)?;
     // Where the zone's date is not that of local mean time, the night lies a day off.
     let span = Span {
@@ -300,11 +302,10 @@ fn showing(
     match outcome {
         Outcome::Closed(closed) => Showing::Absent(absence(tracks, night, closed, rules, clock)),
         Outcome::Spells(found) => {
-            let highest = found.iter().map(|spell| spell.best).max_by(|a, b| {
-                a.altitude
-                    .radians()
-                    .total_cmp(&b.altitude.radians())
-            });
+            let highest = found
+                .iter()
+                .map(|spell| spell.best)
+                .max_by(|a, b| a.altitude.radians().total_cmp(&b.altitude.radians()));
             match highest {
                 Some(best) => Showing::InView(InView {
                     spells: found.iter().map(Spell::span).collect(),
@@ -561,7 +562,11 @@ fn longest_overlap(a: &[Span], b: &[Span]) -> Option<Span> {
     for one in a {
         for other in b {
             let both = Span {
-                from: if one.from > other.from { one.from } else { other.from },
+                from: if one.from > other.from {
+                    one.from
+                } else {
+                    other.from
+                },
                 to: if one.to < other.to { one.to } else { other.to },
             };
             if both.from < both.to && longest.is_none_or(|span| span.days() < both.days()) {
