@@ -93,7 +93,8 @@ fn inner(body: Body, from: &str, to: &str, stands: &Stands) -> Vec<InnerSeason> 
     inner_seasons(&sky, body, years(&sky, from, to), &stands.views()).unwrap()
 }
 
-/// Dates, distances (au) and diameters at opposition, recomputed from DE440 with skyfield 1.55 (radius IAU WGCCRE 2015). The
+/// Dates, distances (au) and diameters at opposition, recomputed from DE440 with skyfield 1.55 in half-day steps, in which
+/// the distance changes by 0.0005 au (radius IAU WGCCRE 2015). The
 /// greatest diameter of the season is reached up to a week or so beside the opposition.
 #[test]
 fn mars_oppositions_2003_to_2025() {
@@ -121,7 +122,7 @@ fn mars_oppositions_2003_to_2025() {
                     .starts_with(date)
             })
             .unwrap_or_else(|| panic!("no opposition on {date}"));
-        assert!((season.distance_au - distance).abs() < 2e-4, "{date}");
+        assert!((season.distance_au - distance).abs() < 6e-4, "{date}");
         let greatest = season.diameter.arcsec();
         assert!(
             (diameter - 0.02..diameter + 0.3).contains(&greatest),

@@ -37,6 +37,8 @@ use crate::sky::{Tt, Utc};
   loopwright new --subject venus --site -35.1,138.6,50 --zone Australia/Adelaide --out venus.ron
   loopwright places --bodies mars --from 2026-11 --to 2027-06 --step 1d
   loopwright events --bodies mars,jupiter --from 2026-11 --to 2027-06
+  loopwright year my-season.ron --from 2026-09-01 --format page
+  loopwright seasons my-season.ron --from 2026 --to 2061 --want disc,high
 
 Never point optics or eyes near the Sun. For work at night follow local rules, and ask qualified people about
 lasers, roofs and access to the site.")]
