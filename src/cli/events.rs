@@ -9,7 +9,6 @@ use crate::season::{EventKind, Span};
 use crate::sheet::table::{Cell, TableWriter};
 use crate::sheet::tables::{EVENT_COLUMNS, event_row, horizon_row};
 use crate::sky::place::Sky;
-use crate::sky::stars::{Star, StarCatalogue};
 use crate::sky::{Body, Tt};
 
 use super::progress::Progress;
@@ -134,7 +133,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     }
     let sky = Sky::for_span(span.from, span.to)?;
     let stars = if wanted.close {
-        bright_zodiac_stars(span.middle())?
+        words::bright_zodiac_stars(span.middle())?
     } else {
         Vec::new()
     };
@@ -205,24 +204,4 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         }
     }
     Ok(())
-}
-
-/// Named stars bright and near enough to the ecliptic to be met by planets.
-fn bright_zodiac_stars(epoch: Tt) -> Result<Vec<&'static Star>, CliError> {
-    const FAINTEST: f64 = 3.0;
-    let frame = crate::sky::frames::ReferenceFrame::j2000();
-    let catalogue =
-        StarCatalogue::embedded().map_err(|error| CliError::Failed(error.to_string()))?;
-    Ok(catalogue
-        .to_magnitude(FAINTEST)
-        .iter()
-        .filter(|star| star.name.is_some())
-        .filter(|star| {
-            (frame.ecliptic_from_icrs * star.direction_at(epoch))
-                .latitude()
-                .degrees()
-                .abs()
-                < 12.0
-        })
-        .collect())
 }

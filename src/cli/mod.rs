@@ -8,9 +8,11 @@ mod events;
 mod new;
 mod places;
 mod progress;
+mod seasons;
 mod sheet;
 mod window;
 pub mod words;
+mod year;
 
 use std::ffi::OsString;
 use std::io;
@@ -36,6 +38,8 @@ use crate::sky::{Tt, Utc};
   loopwright new --subject venus --site -35.1,138.6,50 --zone Australia/Adelaide --out venus.ron
   loopwright places --bodies mars --from 2026-11 --to 2027-06 --step 1d
   loopwright events --bodies mars,jupiter --from 2026-11 --to 2027-06
+  loopwright year my-season.ron --from 2026-09-01 --format page
+  loopwright seasons my-season.ron --from 2026 --to 2061 --want disc,high
 
 Never point optics or eyes near the Sun. For work at night follow local rules, and ask qualified people about
 lasers, roofs and access to the site.")]
@@ -52,6 +56,8 @@ enum Command {
     New(new::Options),
     Places(places::Options),
     Events(events::Options),
+    Year(year::Options),
+    Seasons(seasons::Options),
     Completions(completions::Options),
 }
 
@@ -86,6 +92,8 @@ pub enum CliError {
     Scenario(#[from] ScenarioError),
     #[error(transparent)]
     Plan(#[from] PlanError),
+    #[error(transparent)]
+    Year(#[from] crate::season::year::YearError),
     #[error(transparent)]
     Sheet(#[from] SheetError),
     #[error(transparent)]
@@ -132,6 +140,8 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(Command::New(options)) => new::run(options),
         Some(Command::Places(options)) => places::run(options),
         Some(Command::Events(options)) => events::run(options),
+        Some(Command::Year(options)) => year::run(options),
+        Some(Command::Seasons(options)) => seasons::run(options),
         Some(Command::Completions(options)) => completions::run(options),
     };
     match result {

@@ -2,9 +2,14 @@
 
 use std::str::FromStr;
 
+use super::CliError;
+use crate::scenario::{Scenario, ScenarioError};
+use crate::season::nights::LocalClock;
 use crate::sky::calendar::{CivilDate, parse_utc};
 use crate::sky::delta_t::TimeTables;
+use crate::sky::place::Sky;
 use crate::sky::refraction::Air;
+use crate::sky::stars::{Star, StarCatalogue};
 use crate::sky::time::J2000_JD;
 use crate::sky::{Angle, Body, Site, Tt};
 
@@ -160,6 +165,46 @@ pub fn bodies(text: &str) -> Result<Vec<Body>, String> {
         ));
     }
     Ok(bodies)
+}
+
+/// Named stars bright and near enough to the ecliptic to be met by planets.
+pub(super) fn bright_zodiac_stars(epoch: Tt) -> Result<Vec<&'static Star>, CliError> {
+    const FAINTEST: f64 = 3.0;
+    let frame = crate::sky::frames::ReferenceFrame::j2000();
+    let catalogue =
+        StarCatalogue::embedded().map_err(|error| CliError::Failed(error.to_string()))?;
+    Ok(catalogue
+        .to_magnitude(FAINTEST)
+        .iter()
+        .filter(|star| star.name.is_some())
+        .filter(|star| {
+            (frame.ecliptic_from_icrs * star.direction_at(epoch))
+                .latitude()
+                .degrees()
+                .abs()
+                < 12.0
+        })
+        .collect())
+}
+
+/// The clock of a scenario's site from one instant to another.
+///
+/// # Errors
+/// Outside the calendar's years.
+pub(super) fn site_clock(
+    scenario: &Scenario,
+    sky: &Sky,
+    from: Tt,
+    to: Tt,
+) -> Result<LocalClock, CliError> {
+    let utc = |instant: Tt| sky.tables().utc_from_tt(instant);
+    LocalClock::sampled(utc(from), utc(to), |utc| {
+        scenario
+            .zone
+            .local_from_utc(scenario.site.longitude, utc)
+            .map(|local| local.offset_seconds)
+    })
+    .map_err(|error| CliError::Scenario(ScenarioError::from(error)))
 }
 
 #[cfg(test)]

@@ -4,6 +4,7 @@
 
 pub mod advice;
 pub mod close;
+pub mod compare;
 mod compute;
 mod conditions;
 mod constellation_walk;
@@ -34,6 +35,7 @@ mod track;
 mod types;
 pub mod visibility;
 pub mod weather;
+pub mod year;
 
 pub use compute::{next_season, season};
 pub use conditions::{ClockTime, Conditions, Hours, MoonRule, Weekdays};

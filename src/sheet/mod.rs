@@ -4,6 +4,7 @@ mod brief;
 mod font_subset;
 mod png;
 mod season_sheet;
+pub mod season_tables;
 mod strip_words;
 mod svg;
 pub mod table;

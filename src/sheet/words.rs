@@ -38,6 +38,13 @@ pub fn utc_tenths(sky: &Sky, instant: Tt) -> String {
     utc_text(utc, Precision::Decimals(1)).unwrap_or_else(|error| error.to_string())
 }
 
+/// An instant in UTC (before 1972 UT1) to the minute.
+#[must_use]
+pub fn utc_minute(sky: &Sky, instant: Tt) -> String {
+    let utc = sky.tables().utc_from_tt(instant);
+    utc_text(utc, Precision::Minute).unwrap_or_else(|error| error.to_string())
+}
+
 /// A year as people write it: 2027, 139, 747 BC.
 #[must_use]
 pub fn year_words(year: i32) -> String {
