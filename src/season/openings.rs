@@ -9,6 +9,7 @@ use super::site_tracks::{Limb, SAMPLE_STEP, SiteTracks, Which};
 use super::skyline_scan::{Point, point};
 use super::spans::{Samples, Stretch, clipped, intersection, total_days, union};
 use super::types::Span;
+use super::visibility::Viewer;
 use crate::sky::calendar::CalendarError;
 use crate::sky::physical::semidiameter;
 use crate::sky::place::Sky;
@@ -86,6 +87,9 @@ pub struct NightRules {
     pub sun_distance: Angle,
     /// How far the skyline may be wrong.
     pub skyline_error: Angle,
+    /// With an eye, the best moment of a spell is where the subject stands out most to it, which for planets near the Sun is
+    /// well after they are highest; without, where it is highest.
+    pub best_for: Option<Viewer>,
 }
 
 impl From<Conditions> for NightRules {
@@ -95,6 +99,7 @@ impl From<Conditions> for NightRules {
             sun_down: SunDownRule::default(),
             sun_distance: Angle::from_degrees(20.0),
             skyline_error: Angle::from_degrees(0.5),
+            best_for: None,
         }
     }
 }

@@ -149,6 +149,8 @@ pub enum BestBecause {
     SinksFromStart,
     /// It climbs all the while: as late as can be.
     ClimbsToEnd,
+    /// It stands out most from the sky, though it may not be highest.
+    StandsOutMost,
 }
 
 impl BestBecause {
@@ -159,6 +161,7 @@ impl BestBecause {
             BestBecause::Culminates => "highest",
             BestBecause::SinksFromStart => "at once: it sinks all the while",
             BestBecause::ClimbsToEnd => "at the end: it climbs all the while",
+            BestBecause::StandsOutMost => "stands out most from the sky",
         }
     }
 }
@@ -345,8 +348,17 @@ impl SpellMaker<'_> {
         }
     }
 
-    /// The subject's highest point in a stretch.
+    /// Where the subject stands out most in a stretch, for an eye; else its highest point.
     fn best(&self, stretch: &Stretch<Cause>, points: &[Point]) -> BestMoment {
+        if let Some(viewer) = &self.rules.best_for {
+            let span = Span {
+                from: Tt::from_days(stretch.from),
+                to: Tt::from_days(stretch.to),
+            };
+            if let Some((at, _)) = viewer.best_within(self.tracks, span) {
+                return self.moment(at.days(), BestBecause::StandsOutMost);
+            }
+        }
         let height = |days: f64| self.tracks.standing(Which::Subject, days).direction.z;
         let mut best = (stretch.from, height(stretch.from));
         let mut because = BestBecause::SinksFromStart;

@@ -7,9 +7,12 @@
 //! Twilight models differ by 0.4 magnitudes, eyes by a whole one, and air by more: first and last sightings are therefore
 //! given for clear, usual and hazy air, never as one date.
 
+use std::convert::Infallible;
 use std::f64::consts::TAU;
 
+use super::search::minimum;
 use super::site_tracks::{LocalSky, NightSpan, SiteTracks, Which};
+use super::types::Span;
 use crate::sky::light::{Geometry, MarsTerms, magnitude};
 use crate::sky::refraction::apparent_from_true;
 use crate::sky::{Angle, Body, Site, Skyline, Tdb, Tt, Vec3};
@@ -382,6 +385,35 @@ impl Viewer {
         let nl = sky_brightness_nl(&sight, &self.extinction);
         let loss = self.extinction.loss(altitude);
         Some(limiting_magnitude(nl, loss, self.acuity, aid) - local.magnitude)
+    }
+
+    /// When within a span the subject stands out most to the bare eye, and its margin then: looked for every five minutes, then
+    /// narrowed to some seconds. `None` where it is below the horizon throughout or the span lies outside the tracks.
+    #[must_use]
+    pub fn best_within(&self, tracks: &SiteTracks, span: Span) -> Option<(Tt, f64)> {
+        const STEPS_PER_DAY: f64 = 288.0;
+        const NARROW_DAYS: f64 = 1e-4;
+        let missing = |days: f64| {
+            tracks
+                .at(Tt::from_days(days))
+                .and_then(|local| self.margin(tracks.site(), &local, Aid::NakedEye))
+                .map_or(f64::MAX, |margin| -margin)
+        };
+        let steps = (span.days() * STEPS_PER_DAY).ceil().max(1.0);
+        let step = span.days() / steps;
+        let (from, to) = (span.from.days(), span.to.days());
+        let (at, least) = (0..=steps as usize)
+            .map(|k| from + k as f64 * step)
+            .map(|days| (days, missing(days)))
+            .reduce(|a, b| if b.1 < a.1 { b } else { a })?;
+        if least == f64::MAX {
+            return None;
+        }
+        let (low, high) = ((at - step).max(from), (at + step).min(to));
+        let Ok((at, least)) = minimum(low, (at, least), high, NARROW_DAYS, |days| {
+            Ok::<_, Infallible>(missing(days))
+        });
+        Some((Tt::from_days(at), -least))
     }
 
     /// The least arc of vision (the Sun straight below) at which a point of this magnitude shows, and the altitude of the
