@@ -3,9 +3,15 @@
 //! Exit status: 0 done, 1 could not do it, 2 wrong words. Standard output is data only; progress, cautions and errors go to
 //! standard error.
 
+mod advise;
 mod completions;
 mod events;
+mod frame;
+mod log;
 mod new;
+mod nights;
+mod outings;
+mod picks;
 mod places;
 mod progress;
 mod sheet;
@@ -19,6 +25,7 @@ use std::process::ExitCode;
 use clap::{CommandFactory, FromArgMatches, Parser, Subcommand, ValueEnum};
 
 use crate::scenario::files::FileError;
+use crate::scenario::programme::ProgrammeError;
 use crate::scenario::{PlanError, ScenarioError};
 use crate::sheet::SheetError;
 use crate::sheet::table::TableFormat;
@@ -35,6 +42,8 @@ use crate::sky::{Tt, Utc};
   loopwright new --subject venus --site -35.1,138.6,50 --zone Australia/Adelaide --out venus.ron
   loopwright places --bodies mars --from 2026-11 --to 2027-06 --step 1d
   loopwright events --bodies mars,jupiter --from 2026-11 --to 2027-06
+  loopwright nights my-season.ron              when the planet is in view, night by night
+  loopwright picks my-season.ron --count 6     dates to announce, with reserves and their chances
 
 Never point optics or eyes near the Sun. For work at night follow local rules, and ask qualified people about
 lasers, roofs and access to the site.")]
@@ -51,6 +60,11 @@ enum Command {
     New(new::Options),
     Places(places::Options),
     Events(events::Options),
+    Nights(nights::Options),
+    Picks(picks::Options),
+    Advise(advise::Options),
+    Frame(frame::Options),
+    Log(log::Options),
     Completions(completions::Options),
 }
 
@@ -85,6 +99,8 @@ pub enum CliError {
     Scenario(#[from] ScenarioError),
     #[error(transparent)]
     Plan(#[from] PlanError),
+    #[error(transparent)]
+    Programme(#[from] ProgrammeError),
     #[error(transparent)]
     Sheet(#[from] SheetError),
     #[error(transparent)]
@@ -131,6 +147,11 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(Command::New(options)) => new::run(options),
         Some(Command::Places(options)) => places::run(options),
         Some(Command::Events(options)) => events::run(options),
+        Some(Command::Nights(options)) => nights::run(options),
+        Some(Command::Picks(options)) => picks::run(options),
+        Some(Command::Advise(options)) => advise::run(options),
+        Some(Command::Frame(options)) => frame::run(options),
+        Some(Command::Log(options)) => log::run(options),
         Some(Command::Completions(options)) => completions::run(options),
     };
     match result {
