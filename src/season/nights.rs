@@ -210,7 +210,7 @@ fn passages(
     f: impl Fn(f64) -> f64,
 ) -> Passages {
     let samples = Samples {
-        from: tracks.from_days(),
+        from: tracks.start_days(),
         step: SAMPLE_STEP,
         values,
     };
@@ -344,12 +344,12 @@ fn lowest_sun(tracks: &SiteTracks, span: NightSpan) -> (Tt, Angle) {
     let (from, to) = (span.span.from.days(), span.span.to.days());
     let count = ((to - from) / SAMPLE_STEP) as usize;
     let mut best = (from, sine(from));
-    let first = ((from - tracks.from_days()) / SAMPLE_STEP).ceil() as usize;
+    let first = ((from - tracks.start_days()) / SAMPLE_STEP).ceil() as usize;
     for k in first..first + count {
         if let Some(&value) = tracks.sampled.sun.get(k)
             && value < best.1
         {
-            best = (tracks.from_days() + k as f64 * SAMPLE_STEP, value);
+            best = (tracks.start_days() + k as f64 * SAMPLE_STEP, value);
         }
     }
     let low = (best.0 - SAMPLE_STEP).max(from);

@@ -87,8 +87,8 @@ pub struct NightRules {
     pub sun_distance: Angle,
     /// How far the skyline may be wrong.
     pub skyline_error: Angle,
-    /// With an eye, the best moment of a spell is where the subject stands out most to it, which for planets near the Sun is
-    /// well after they are highest; without, where it is highest.
+    /// With an eye, the best moment of a spell of Mercury or Venus is where the planet stands out most to it, which in the
+    /// evening is well after it is highest; without, and for other subjects, where it is highest.
     pub best_for: Option<Viewer>,
 }
 
@@ -235,7 +235,7 @@ impl Openings {
     fn push_window(&mut self, tracks: &SiteTracks, stretch: Stretch<Cause>) {
         let first = self.points.len();
         self.points.push(point(tracks, stretch.from));
-        let start = tracks.from_days();
+        let start = tracks.start_days();
         let mut k = ((stretch.from - start) / SAMPLE_STEP).floor() + 1.0;
         while start + k * SAMPLE_STEP < stretch.to {
             self.points.push(point(tracks, start + k * SAMPLE_STEP));
@@ -282,7 +282,7 @@ impl<'a> Sets<'a> {
     }
 
     fn everything(&self, cause: Cause) -> Vec<Stretch<Cause>> {
-        let from = self.tracks.from_days();
+        let from = self.tracks.start_days();
         let steps = self.tracks.sampled.sun.len().saturating_sub(1);
         vec![Stretch {
             from,
@@ -300,7 +300,7 @@ impl<'a> Sets<'a> {
         f: impl Fn(f64) -> f64,
     ) -> Vec<Stretch<Cause>> {
         let samples = Samples {
-            from: self.tracks.from_days(),
+            from: self.tracks.start_days(),
             step: SAMPLE_STEP,
             values,
         };
@@ -397,7 +397,7 @@ impl<'a> Sets<'a> {
                 rule.unless_lit_below - lit
             };
             let values: Vec<f64> = (0..sampled.moon.len())
-                .map(|k| spare(tracks.from_days() + k as f64 * SAMPLE_STEP))
+                .map(|k| spare(tracks.start_days() + k as f64 * SAMPLE_STEP))
                 .collect();
             let thin = self.where_not_negative(&values, LIT_CURVATURE, Cause::MoonLit, spare);
             allowed = union(&allowed, &thin);

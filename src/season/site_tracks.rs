@@ -358,7 +358,7 @@ impl SiteTracks {
     }
 
     /// Instant of the first sample.
-    pub(super) fn from_days(&self) -> f64 {
+    pub(super) fn start_days(&self) -> f64 {
         self.from
     }
 

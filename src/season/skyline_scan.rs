@@ -72,7 +72,7 @@ impl<'a> SkylineScan<'a> {
                 .map(|vertex| vertex.altitude.radians())
         };
         let flat = skyline.vertices().is_empty();
-        // Four times what Bennett's formula does in ordinary air at -1 degree, and as much more as the air is denser.
+        // Six times what Bennett's formula does in ordinary air (3.3 at -1 degree), and more where the air is denser.
         let air = &tracks.site().air;
         let lift = apparent_from_true(Angle::ZERO, air).degrees() * 60.0 / 28.0;
         SkylineScan {

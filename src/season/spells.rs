@@ -73,18 +73,16 @@ impl EdgeCause {
         match self {
             EdgeCause::NightLimit => choose("start of night", "end of night"),
             EdgeCause::SunAltitude { limit } => {
-                let twilight = match limit.degrees().round() as i32 {
-                    -6 => "civil twilight",
-                    -12 => "nautical twilight",
-                    -18 => "astronomical twilight",
-                    _ => {
-                        let depth = limit.degrees();
-                        return if depth < 0.0 {
-                            format!("Sun {:.0} deg down", -depth)
-                        } else {
-                            format!("Sun {depth:.0} deg up")
-                        };
-                    }
+                let named = [
+                    (-6.0, "civil twilight"),
+                    (-12.0, "nautical twilight"),
+                    (-18.0, "astronomical twilight"),
+                ];
+                let is_limit =
+                    |(degrees, _): &(f64, &str)| (limit.degrees() - degrees).abs() < 0.01;
+                let Some((_, twilight)) = named.into_iter().find(is_limit) else {
+                    let side = if *limit < Angle::ZERO { "down" } else { "up" };
+                    return format!("Sun {} deg {side}", degrees_text(limit.abs()));
                 };
                 if start {
                     format!("end of {twilight}")
@@ -98,7 +96,7 @@ impl EdgeCause {
             }
             EdgeCause::LeastAltitude { limit } => {
                 let side = choose("rises above", "sinks below");
-                format!("{side} {:.0} deg", limit.degrees())
+                format!("{side} {} deg", degrees_text(*limit))
             }
             EdgeCause::Skyline { part, azimuth } => {
                 // Never "az 360".
@@ -127,6 +125,16 @@ impl EdgeCause {
             EdgeCause::Hours => choose("hours begin", "hours end"),
             EdgeCause::Weekday => choose("weekday begins", "weekday ends"),
         }
+    }
+}
+
+/// A limit as the user set it: whole where it is, else to a tenth.
+fn degrees_text(limit: Angle) -> String {
+    let tenths = (limit.degrees() * 10.0).round();
+    if tenths % 10.0 == 0.0 {
+        format!("{:.0}", tenths / 10.0)
+    } else {
+        format!("{:.1}", tenths / 10.0)
     }
 }
 
@@ -348,9 +356,11 @@ impl SpellMaker<'_> {
         }
     }
 
-    /// Where the subject stands out most in a stretch, for an eye; else its highest point.
+    /// Where an inner planet stands out most in a stretch, for an eye; else the subject's highest point.
     fn best(&self, stretch: &Stretch<Cause>, points: &[Point]) -> BestMoment {
-        if let Some(viewer) = &self.rules.best_for {
+        if let Some(viewer) = &self.rules.best_for
+            && self.tracks.subject().is_inner_planet()
+        {
             let span = Span {
                 from: Tt::from_days(stretch.from),
                 to: Tt::from_days(stretch.to),
