@@ -13,7 +13,7 @@ use loopwright::season::log::Outcome;
 use loopwright::sky::Tt;
 use loopwright::sky::calendar::{CivilDate, Weekday, parse_utc};
 
-/// Scenario, a day before its path, a day amid it, and a gap in degrees.
+/// Scenario, a day before its path, and a day amid it.
 const SHIPPED: [(&str, &str, &str); 5] = [
     ("mars-loop-2026", "2026-09-20", "2027-02-01"),
     ("venus-evening-2029", "2029-07-01", "2029-09-20"),
@@ -72,6 +72,46 @@ fn column(csv: &str, name: &str) -> usize {
     header.split(',').position(|word| word == name).unwrap()
 }
 
+#[test]
+fn a_picture_fixed_on_the_ground_holds_the_dates_over_the_roofs() {
+    let page = done(&[
+        "frame",
+        &shipped("venus-evening-2029"),
+        "--on",
+        "ground",
+        "--today",
+        "2029-07-01",
+    ]);
+    assert!(
+        page.contains("the Sun at -6.0 deg in the evening"),
+        "{page}"
+    );
+    assert!(page.contains("Sat 27 October 2029, evening, "), "{page}");
+    // Greatest elongation: 40 degrees up at the end of civil twilight, says the scenario's own remark.
+    let line = page
+        .lines()
+        .find(|line| line.contains("Sat 27 October 2029"))
+        .unwrap();
+    let altitude = line.split("altitude ").nth(1).unwrap();
+    let altitude: f64 = altitude.split(' ').next().unwrap().parse().unwrap();
+    assert!((37.0..42.0).contains(&altitude), "{line}");
+    // The Sun must be down.
+    refused(
+        &[
+            "frame",
+            &shipped("venus-evening-2029"),
+            "--on",
+            "ground",
+            "--sun",
+            "3",
+            "--today",
+            "2029-07-01",
+        ],
+        1,
+        &["Sun's altitude 3", "-1 degrees"],
+    );
+}
+
 /// The embedded scenario as a file in a folder, with a part replaced.
 fn changed(folder: &Path, part: &str, replacement: &str) -> PathBuf {
     let original = fs::read_to_string(shipped("mars-loop-2026")).unwrap();
@@ -117,8 +157,10 @@ fn nights_have_the_agreed_columns_and_a_row_each() {
                 altitude > conditions.least_altitude.degrees() - 0.02,
                 "{row:?}"
             );
+            // At an edge the skyline may be a wall, and the table gives its top.
+            let at_edge = row[3] == row[1] || row[3] == row[2];
             assert!(
-                altitude > number(row, 6) + conditions.clearance.degrees() - 0.02,
+                at_edge || altitude > number(row, 6) + conditions.clearance.degrees() - 0.02,
                 "{row:?}"
             );
             assert!(
@@ -248,13 +290,19 @@ fn a_page_of_picks_names_weekday_and_civil_date() {
 #[test]
 fn advice_is_given_for_every_scenario() {
     for (name, _, today) in SHIPPED {
+        // Saturn's whole path of that winter is shorter than 10 degrees.
+        let gap = if name.starts_with("saturn") {
+            "3"
+        } else {
+            "15"
+        };
         let words = [
             "advise",
             &shipped(name),
             "--outings",
             "30",
             "--gap",
-            "15",
+            gap,
             "--today",
             today,
         ];

@@ -393,9 +393,9 @@ fn an_unknown_field_is_named_with_the_one_that_was_meant() {
         &["lattitude", "did you mean latitude?"],
     );
     assert_complains(
-        &spoilt("    skyline:", "    weather: (),\n    skyline:"),
+        &spoilt("    skyline:", "    humidity: (),\n    skyline:"),
         "8:5",
-        &["weather", "skyline", "conditions"],
+        &["humidity", "skyline", "conditions"],
     );
 }
 

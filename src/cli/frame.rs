@@ -3,15 +3,18 @@
 use std::io::{BufWriter, Write, stdout};
 use std::path::PathBuf;
 
+use clap::ValueEnum;
+
 use crate::scenario::Camera;
 use crate::scenario::programme::Programme;
+use crate::season::Span;
 use crate::season::exposure::{AngularRate, ThumbRule};
 use crate::season::framing::{
     FrameError, LongestLens, PhotoFrame, longest_lens, longest_run, mosaic, smallest_rectangle,
 };
 use crate::season::lens::OutOfRange;
 use crate::season::picks::Measure;
-use crate::season::stacking::StarStack;
+use crate::season::stacking::{NightHalf, StarStack};
 use crate::sheet::table::{Cell, TableFormat, TableWriter};
 use crate::sheet::words::LocalClock;
 use crate::sky::calendar::CivilDate;
@@ -25,8 +28,9 @@ use super::picks::By;
 
 /// Frame the path: which lens holds it with named stars, how it is aimed and tilted, where each date falls.
 #[derive(Debug, clap::Args)]
-#[command(after_help = "Example:
+#[command(after_help = "Examples:
   loopwright frame scenarios/mars-loop-2026.ron --stars Regulus,Algieba --margin 2 --today 2026-09-20
+  loopwright frame scenarios/venus-evening-2029.ron --on ground --sun -6 --today 2029-07-01
 
 The path is that of the picks, from its first night to its last; the dates are those that \"loopwright picks\" gives, and the
 frames of the log. Positions are astrometric, of the site, on ICRS axes; pixels count from the top left corner of the picture, x
@@ -45,6 +49,20 @@ pub struct Options {
         allow_hyphen_values = true
     )]
     margin: f64,
+    /// On what the pictures of all dates are laid: the same stars, or the same ground.
+    #[arg(long, value_enum, default_value_t)]
+    on: Base,
+    /// On the ground: altitude of the Sun at which every picture is taken, degrees.
+    #[arg(
+        long,
+        value_name = "DEG",
+        default_value_t = -6.0,
+        allow_hyphen_values = true
+    )]
+    sun: f64,
+    /// On the ground: at dawn instead of dusk.
+    #[arg(long)]
+    morning: bool,
     /// Longest trail of a star in an untracked exposure, pixels.
     #[arg(
         long,
@@ -64,6 +82,16 @@ pub struct Options {
     today: Option<CivilDate>,
     #[arg(long, value_enum, default_value_t)]
     format: PageFormat,
+}
+
+/// What a stacked picture is fixed on.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, ValueEnum)]
+enum Base {
+    /// The loop among the constellations.
+    #[default]
+    Stars,
+    /// An arc over the skyline; a page of words only.
+    Ground,
 }
 
 const COLUMNS: &[&str] = &[
@@ -123,6 +151,9 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     let measure = options.by.map_or(scenario.picks.measure, Measure::from);
     let count = options.count.unwrap_or(scenario.picks.count);
     let dots = dots(&programme, count, measure, today)?;
+    if options.on == Base::Ground {
+        return ground_page(options, &programme, &dots);
+    }
     let path = path(&programme)?;
     let stars = stars(options.stars.as_deref(), path.first().map(|point| point.0))?;
     let margin = Angle::from_degrees(options.margin);
@@ -157,6 +188,34 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         PageFormat::Json => table(&plan.sky, &views, &dots, TableFormat::Json)?,
     }
     print_cautions(&plan);
+    Ok(())
+}
+
+fn ground_page(options: &Options, programme: &Programme<'_>, dots: &[Dot]) -> Result<(), CliError> {
+    if options.format != PageFormat::Words {
+        return Err(CliError::Words(
+            "--on ground is written as words only; leave --format out".to_owned(),
+        ));
+    }
+    let half = if options.morning {
+        NightHalf::Morning
+    } else {
+        NightHalf::Evening
+    };
+    let nights: Vec<Span> = dots
+        .iter()
+        .filter_map(|dot| programme.season.night(dot.night))
+        .map(|night| night.night.span)
+        .collect();
+    let sun = Angle::from_degrees(options.sun);
+    let lines = super::ground::lines(programme, &nights, sun, half)?;
+    let mut out = BufWriter::new(stdout().lock());
+    writeln!(out, "{}", programme.plan.scenario.title)?;
+    for line in lines {
+        writeln!(out, "{line}")?;
+    }
+    out.flush()?;
+    print_cautions(programme.plan);
     Ok(())
 }
 

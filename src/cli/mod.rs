@@ -7,6 +7,7 @@ mod advise;
 mod completions;
 mod events;
 mod frame;
+mod ground;
 mod log;
 mod new;
 mod nights;

@@ -68,7 +68,8 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         .count();
     eprintln!("{with} of {} nights have a spell", nights.len());
     print_cautions(&plan);
-    print_spell_cautions(nights.iter().flat_map(|night| night.offer.spells()));
+    let spells = nights.iter().flat_map(|night| night.offer.spells());
+    print_spell_cautions(&plan, spells);
     Ok(())
 }
 

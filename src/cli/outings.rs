@@ -58,12 +58,13 @@ pub(super) fn print_cautions(plan: &Plan) {
     }
 }
 
-/// The cautions that the spells themselves carry, each once, to standard error.
-pub(super) fn print_spell_cautions<'a>(spells: impl Iterator<Item = &'a JudgedSpell>) {
+/// The cautions that the spells carry beyond those of the season, each once, to standard error.
+pub(super) fn print_spell_cautions<'a>(plan: &Plan, spells: impl Iterator<Item = &'a JudgedSpell>) {
     let all = spells.fold(Cautions::default(), |all, judged| {
         all.and(judged.spell.cautions)
     });
-    for caution in all.iter() {
+    let season = plan.season.cautions;
+    for caution in all.iter().filter(|caution| !season.contains(*caution)) {
         eprintln!("{}", crate::sheet::words::capitalised(caution.sentence()));
     }
 }
