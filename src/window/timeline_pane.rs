@@ -9,7 +9,8 @@ use super::painter::{Easel, Picture, Placement, Shift};
 use super::state::{Action, View};
 use super::strip_pane::{SHEET_SCALE, focus_ring};
 use crate::chart::{
-    Level, MarkId, Palette, Timeline, TimelineLayout, TimelineText, TimelineView, timeline, timeline_cursor,
+    Level, MarkId, Palette, Timeline, TimelineLayout, TimelineText, TimelineView, timeline,
+    timeline_cursor,
 };
 use crate::scenario::Plan;
 use crate::season::darkness::{Darkness, Place, darkness};
@@ -39,7 +40,11 @@ impl NightsMade {
         };
         let darkness = darkness(&plan.sky, place, plan.season.subject, plan.season.span)?;
         let text = timeline_text(&plan, &darkness);
-        Ok(NightsMade { plan, darkness, text })
+        Ok(NightsMade {
+            plan,
+            darkness,
+            text,
+        })
     }
 }
 
@@ -81,7 +86,9 @@ impl TimelinePane {
     /// Whether the nights are those of this plan.
     #[must_use]
     pub fn is_current(&self, plan: &Arc<Plan>) -> bool {
-        self.nights.as_ref().is_some_and(|nights| Arc::ptr_eq(&nights.plan, plan))
+        self.nights
+            .as_ref()
+            .is_some_and(|nights| Arc::ptr_eq(&nights.plan, plan))
     }
 }
 
@@ -103,7 +110,9 @@ pub fn show(
     let (rect, response) = ui.allocate_exact_size(size, Sense::click_and_drag());
     pane.hover = None;
     let Some(nights) = pane.nights.clone() else {
-        response.widget_info(|| WidgetInfo::labeled(egui::Role::Image, true, "timeline, being worked out"));
+        response.widget_info(|| {
+            WidgetInfo::labeled(egui::Role::Image, true, "timeline, being worked out")
+        });
         return actions;
     };
     let wanted = TimelineView {
@@ -113,33 +122,64 @@ pub fn show(
         window: view.nights,
     };
     let easel = Easel {
-        placement: Placement { left: f64::from(rect.left()), top: f64::from(rect.top()), scale: 1.0 },
+        placement: Placement {
+            left: f64::from(rect.left()),
+            top: f64::from(rect.top()),
+            scale: 1.0,
+        },
         palette: *palette,
         pixels_per_point: ui.ctx().pixels_per_point(),
         clip: rect,
     };
     let fits = pane.drawn.as_ref().is_some_and(|drawn| {
-        Arc::ptr_eq(&drawn.nights, &nights) && drawn.view == wanted && *drawn.picture.easel() == easel
+        Arc::ptr_eq(&drawn.nights, &nights)
+            && drawn.view == wanted
+            && *drawn.picture.easel() == easel
     });
     if !fits {
         let made = timeline(&plan.season, &nights.darkness, &nights.text, &wanted);
-        let picture = Picture::new(&made.scene, easel.clone(), |_| Level::Stars);
-        pane.drawn = Some(Drawn { nights: Arc::clone(&nights), view: wanted, timeline: made, picture });
+        let picture = Picture::new(&made.scene, easel.clone(), |_| Level::Paper);
+        pane.drawn = Some(Drawn {
+            nights: Arc::clone(&nights),
+            view: wanted,
+            timeline: made,
+            picture,
+        });
     }
-    let Some(drawn) = &pane.drawn else { return actions };
+    let Some(drawn) = &pane.drawn else {
+        return actions;
+    };
     let layout = &drawn.timeline.layout;
     if ui.is_rect_visible(rect) {
-        let cursor = Picture::new(&timeline_cursor(layout, &wanted, view.instant), easel.clone(), |_| Level::Over);
-        drawn.picture.show(ui.painter(), Shift::NONE, &[], Some(&cursor));
+        let cursor = Picture::new(
+            &timeline_cursor(layout, &wanted, view.instant),
+            easel.clone(),
+            |_| Level::Over,
+        );
+        drawn
+            .picture
+            .show(ui.painter(), Shift::NONE, &[], Some(&cursor));
     }
-    actions.extend(told(ui, &response, layout, nights.darkness.nights.len(), plan, view, &nights.text));
+    actions.extend(told(
+        ui,
+        &response,
+        layout,
+        nights.darkness.nights.len(),
+        plan,
+        view,
+        &nights.text,
+    ));
     let placement = easel.placement;
     if let Some(pos) = response.interact_pointer_pos()
         && (response.dragged() || response.clicked())
     {
         let point = placement.point(pos);
         let clicked = response.clicked();
-        let way = if clicked { None } else { direction(ui, pane.drag) };
+        let way = if clicked {
+            None
+        } else {
+            direction(ui, pane.drag)
+        };
         pane.drag = way;
         if clicked {
             response.request_focus();
@@ -166,7 +206,8 @@ fn direction(ui: &Ui, before: Option<Drag>) -> Option<Drag> {
     if before.is_some() {
         return before;
     }
-    let (origin, now) = ui.input(|input| (input.pointer.press_origin(), input.pointer.interact_pos()));
+    let (origin, now) =
+        ui.input(|input| (input.pointer.press_origin(), input.pointer.interact_pos()));
     let gone = now? - origin?;
     if gone.length() < DECIDED {
         None
@@ -178,7 +219,12 @@ fn direction(ui: &Ui, before: Option<Drag>) -> Option<Drag> {
 }
 
 /// Sideways whole days pass and what is held stays; upright the hours of the one night.
-fn scrubbed(layout: &TimelineLayout, way: Drag, point: crate::chart::Point, instant: Tt) -> Option<Action> {
+fn scrubbed(
+    layout: &TimelineLayout,
+    way: Drag,
+    point: crate::chart::Point,
+    instant: Tt,
+) -> Option<Action> {
     match way {
         Drag::Nights => {
             let there = layout.same_hour_at(point.x, instant)?;
@@ -188,7 +234,9 @@ fn scrubbed(layout: &TimelineLayout, way: Drag, point: crate::chart::Point, inst
         Drag::Hours => {
             let night = layout.nights_to(instant).floor();
             let x = layout.x(night + 0.5);
-            layout.instant_at(crate::chart::Point::new(x, point.y)).map(Action::GoTo)
+            layout
+                .instant_at(crate::chart::Point::new(x, point.y))
+                .map(Action::GoTo)
         }
     }
 }
@@ -196,17 +244,27 @@ fn scrubbed(layout: &TimelineLayout, way: Drag, point: crate::chart::Point, inst
 /// The words for what lies under the pointer: an event near its mark, else the night and the hour.
 fn under(plan: &Plan, timeline: &Timeline, point: crate::chart::Point) -> Option<String> {
     const REACH: f64 = 5.0;
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     for hit in timeline.scene.hit(point, REACH) {
         if let MarkId::Event(index) = hit.id {
             let event = plan.season.events.get(index)?;
-            return Some(format!("{}, {}", super::capitalised(event.kind.phrase()), clock.long(event.instant)));
+            return Some(format!(
+                "{}, {}",
+                super::capitalised(event.kind.phrase()),
+                clock.long(event.instant)
+            ));
         }
     }
     if !timeline.layout.plot.contains(point) {
         return None;
     }
-    timeline.layout.instant_at(point).map(|instant| clock.long(instant))
+    timeline
+        .layout
+        .instant_at(point)
+        .map(|instant| clock.long(instant))
 }
 
 fn wheel(ui: &Ui, layout: &TimelineLayout, nights: usize, x: f64) -> Option<Action> {
@@ -238,7 +296,10 @@ fn told(
 ) -> Vec<Action> {
     let night = layout.nights_to(view.instant).floor();
     response.widget_info(|| WidgetInfo::slider(true, night, "timeline, night of the season"));
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     ui.ctx().accesskit_node_builder(response.id, |node| {
         node.set_min_numeric_value(0.0);
         node.set_max_numeric_value(nights.saturating_sub(1) as f64);
@@ -260,7 +321,9 @@ fn told(
             if let Some(accesskit::ActionData::NumericValue(value)) = request.data
                 && value.is_finite()
             {
-                actions.push(Action::GoToDay(view.instant.plus_days(value.round() - night)));
+                actions.push(Action::GoToDay(
+                    view.instant.plus_days(value.round() - night),
+                ));
             }
         }
         actions
