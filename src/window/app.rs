@@ -13,7 +13,7 @@ use super::state::{Action, Effect, Panel, State};
 use super::strip_pane::{self, StripMade, StripPane};
 use super::theme::{MARGIN, TITLE, colour, dress, font, fonts, palette, theme_word};
 use super::time_words::{local_text, read_local, universal_text, zone_text};
-use super::timeline_pane::{self, NightsMade, TimelinePane};
+use super::timeline_pane::{self, NightsMade, TimelineMade, TimelinePane, TimelineWanted};
 use super::widgets::{Standing, caption, caution, word};
 use super::readings_pane;
 use crate::chart::{Font, Outline, OverlayStyle, Palette, Rect, Role, Scene, StripView, note_boxes, skyline_overlay};
@@ -37,6 +37,7 @@ pub enum Done {
     Tonight(Arc<Plan>, Result<Tonight, SkyError>),
     Strip(Box<StripMade>),
     Nights(Result<Box<NightsMade>, SkyError>),
+    Timeline(Box<TimelineMade>),
 }
 
 /// A moment with what it was worked out from.
@@ -68,6 +69,7 @@ pub struct Window {
     asked_plan: Option<Arc<Scenario>>,
     asked_strip: Option<(Arc<Plan>, StripView)>,
     asked_nights: Option<Arc<Plan>>,
+    asked_timeline: Option<(Arc<NightsMade>, TimelineWanted)>,
     asked_tonight: Option<(Arc<Plan>, Tt)>,
     date_field: Field,
     step_field: Field,
@@ -100,6 +102,7 @@ impl Window {
             asked_plan: None,
             asked_strip: None,
             asked_nights: None,
+            asked_timeline: None,
             asked_tonight: None,
             date_field: Field::default(),
             step_field: Field::default(),
@@ -141,7 +144,7 @@ impl Window {
     /// Whether something on screen waits for the worker.
     #[must_use]
     pub fn is_working(&self) -> bool {
-        [Kind::Plan, Kind::Tonight, Kind::Strip, Kind::Nights].into_iter().any(|kind| self.worker.is_busy(kind))
+        Kind::ALL.into_iter().any(|kind| self.worker.is_busy(kind))
     }
 
     /// Waits until nothing is under way any more.
@@ -209,7 +212,8 @@ impl Window {
                 }
             }
             Done::Tonight(plan, Ok(tonight)) => self.tonight = Some((plan, tonight)),
-            Done::Nights(Ok(nights)) => self.timeline.take(*nights),
+            Done::Nights(Ok(nights)) => self.timeline.take_nights(*nights),
+            Done::Timeline(made) => self.timeline.take(*made),
             Done::Strip(made) => self.strip.take(*made),
             Done::Tonight(_, Err(error)) | Done::Nights(Err(error)) => self.state.complain(error.to_string()),
         }
@@ -242,6 +246,16 @@ impl Window {
             self.asked_nights = Some(Arc::clone(&plan));
             let plan = Arc::clone(&plan);
             self.worker.ask(Kind::Nights, move || Done::Nights(NightsMade::new(plan).map(Box::new)));
+        }
+        if let Some((nights, wanted)) = self.timeline.nights().cloned().zip(self.timeline.wanted.clone()) {
+            let is_asked = self
+                .asked_timeline
+                .as_ref()
+                .is_some_and(|(of, asked)| Arc::ptr_eq(of, &nights) && *asked == wanted);
+            if !is_asked {
+                self.asked_timeline = Some((Arc::clone(&nights), wanted.clone()));
+                self.worker.ask(Kind::Timeline, move || Done::Timeline(Box::new(TimelineMade::new(nights, wanted))));
+            }
         }
         self.moment_of(&plan);
         let instant = self.state.view.instant;
@@ -452,7 +466,7 @@ impl Window {
             ui.add_space(10.0 * scale);
             caption(ui, "step");
             let width = 62.0 * scale;
-            let typed = self.step_field.show(ui, colours, "step", width, &view.step.to_string(), |text| {
+            let typed = self.step_field.show(ui, colours, "length of a step", width, &view.step.to_string(), |text| {
                 text.parse::<Step>().map_err(|error| error.to_string())
             });
             actions.extend(typed.map(Action::SetStep));
@@ -585,7 +599,7 @@ impl Window {
             let where_it_is = if height < 0.0 { "behind" } else { "above" };
             format!(" stands in {}, {:.1} degrees {where_it_is} {part}", subject.constellation.name(), height.abs())
         });
-        format!("strip, {}: {}{place}", clock.long(self.state.view.instant), plan.season.subject)
+        format!("strip at {}: {}{place}", clock.long(self.state.view.instant), plan.season.subject)
     }
 }
 

@@ -115,7 +115,7 @@ impl Picture {
         marks.sort_by_key(|(level, _)| *level);
         let mut pieces: Vec<Piece> = Vec::new();
         let mut brush = Brush::new(&easel);
-        let mut place = (Level::Stars, true);
+        let mut place = (Level::Paper, true);
         for (level, mark) in marks {
             let next = (level, matches!(mark.layer, Layer::Sheet | Layer::Plate | Layer::Frame));
             // One mesh for all that belongs together.
