@@ -8,8 +8,8 @@ use std::sync::Arc;
 
 use egui::{Pos2, Rect, Vec2};
 use loopwright::chart::{
-    Layer, Level, MarkId, Outline, OverlayStyle, Paint, Palette, Point, RibbonPoint, Role, Scene, Shape, StripView,
-    note_boxes, skyline_overlay,
+    Layer, Level, MarkId, Outline, OverlayStyle, Paint, Palette, Point, RibbonPoint, Role, Scene,
+    Shape, StripView, note_boxes, skyline_overlay,
 };
 use loopwright::scenario::{Plan, Scenario};
 use loopwright::season::moment::{Watch, moment};
@@ -66,13 +66,21 @@ fn crowd(scene: &mut Scene) {
                 }
             })
             .collect();
-        scene.add(MarkId::Track(Body::Mars), Layer::Track, Shape::Ribbon(points));
+        scene.add(
+            MarkId::Track(Body::Mars),
+            Layer::Track,
+            Shape::Ribbon(points),
+        );
     }
     scene.sort();
 }
 
 fn stage() -> Stage {
-    let plan = Plan::new(Scenario::embedded().expect("built in"), Tt::from_days(9_800.0)).expect("a season");
+    let plan = Plan::new(
+        Scenario::embedded().expect("built in"),
+        Tt::from_days(9_800.0),
+    )
+    .expect("a season");
     let view = StripView {
         width: f64::from(SIZE.x) / SCALE,
         height: f64::from(SIZE.y) / SCALE,
@@ -82,7 +90,11 @@ fn stage() -> Stage {
     let mut made = StripMade::new(Arc::new(plan), view);
     crowd(&mut made.scene);
     let easel = Easel {
-        placement: Placement { left: 0.0, top: 0.0, scale: SCALE },
+        placement: Placement {
+            left: 0.0,
+            top: 0.0,
+            scale: SCALE,
+        },
         palette: Palette::DARK,
         pixels_per_point: 1.0,
         clip: Rect::from_min_size(Pos2::ZERO, SIZE),
@@ -120,15 +132,25 @@ impl Stage {
             sun_distance: scenario.sun_distance,
             keep_clear: &self.boxes,
         };
-        let scene = skyline_overlay(&plan.season, &self.made.layout, &self.outline, &moment, &style);
+        let scene = skyline_overlay(
+            &plan.season,
+            &self.made.layout,
+            &self.outline,
+            &moment,
+            &style,
+        );
         Picture::new(&scene, self.easel.clone(), Level::of_overlay)
     }
 
     fn frame(&self, instant: Tt) -> usize {
         let over = self.overlay(instant);
-        let input = egui::RawInput { screen_rect: Some(self.easel.clip), ..egui::RawInput::default() };
+        let input = egui::RawInput {
+            screen_rect: Some(self.easel.clip),
+            ..egui::RawInput::default()
+        };
         let output = self.ctx.run_ui(input, |ui| {
-            self.picture.show(ui.painter(), Shift::NONE, &[], Some(&over));
+            self.picture
+                .show(ui.painter(), Shift::NONE, &[], Some(&over));
         });
         self.ctx.tessellate(output.shapes, 1.0).len()
     }
@@ -154,7 +176,9 @@ fn overlay_alone(bencher: divan::Bencher<'_, '_>) {
     let mut minutes = 0.0;
     bencher.bench_local(|| {
         minutes += 10.0;
-        stage.overlay(from.plus_seconds(60.0 * (minutes % 100_000.0))).vertices()
+        stage
+            .overlay(from.plus_seconds(60.0 * (minutes % 100_000.0)))
+            .vertices()
     });
 }
 
@@ -162,12 +186,19 @@ fn overlay_alone(bencher: divan::Bencher<'_, '_>) {
 #[divan::bench]
 fn picture_made_again(bencher: divan::Bencher<'_, '_>) {
     let stage = stage();
-    bencher.bench_local(|| Picture::new(&stage.made.scene, stage.easel.clone(), Level::of_strip).vertices());
+    bencher.bench_local(|| {
+        Picture::new(&stage.made.scene, stage.easel.clone(), Level::of_strip).vertices()
+    });
 }
 
 /// Laying the chart out: on the worker, when the view changes.
 #[divan::bench(sample_count = 20)]
 fn strip_laid_out(bencher: divan::Bencher<'_, '_>) {
     let stage = stage();
-    bencher.bench_local(|| StripMade::new(Arc::clone(&stage.made.plan), stage.made.view.clone()).scene.marks.len());
+    bencher.bench_local(|| {
+        StripMade::new(Arc::clone(&stage.made.plan), stage.made.view.clone())
+            .scene
+            .marks
+            .len()
+    });
 }

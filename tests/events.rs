@@ -138,12 +138,25 @@ fn the_other_planets_agree_with_de440() {
                 .filter(|event| event.kind.word() == row.text("kind"))
                 .map(|event| (event.instant.days() - instant.days()).abs() * 86_400.0)
                 .fold(f64::MAX, f64::min);
-            let kind = ours.iter().find(|event| event.kind.word() == row.text("kind")).expect("the kind").kind;
+            let kind = ours
+                .iter()
+                .find(|event| event.kind.word() == row.text("kind"))
+                .expect("the kind")
+                .kind;
             let limit = tolerance_seconds(body, kind);
-            assert!(off < limit, "{body} {} {}: {off} s", row.text("kind"), row.text("jd_tt"));
+            assert!(
+                off < limit,
+                "{body} {} {}: {off} s",
+                row.text("kind"),
+                row.text("jd_tt")
+            );
             worst = worst.max(off);
         }
-        assert_eq!(ours.len(), theirs.len(), "{body}: as many events as in the table");
+        assert_eq!(
+            ours.len(),
+            theirs.len(),
+            "{body}: as many events as in the table"
+        );
         println!("{body}: {} events, worst {worst:.1} s", ours.len());
     }
 }

@@ -4,7 +4,9 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 /// From the bottom up.
-const LAYERS: [&str; 7] = ["sky", "season", "scenario", "chart", "sheet", "window", "cli"];
+const LAYERS: [&str; 7] = [
+    "sky", "season", "scenario", "chart", "sheet", "window", "cli",
+];
 
 fn rust_files(folder: &Path) -> Vec<PathBuf> {
     let mut files = Vec::new();

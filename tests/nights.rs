@@ -1,6 +1,5 @@
 //! Nights and spells against searches by brute force with the full chain of places, and against almanac numbers.
 
-#[allow(dead_code, reason = "shared by tests that each use a part")]
 mod common;
 
 use common::table;

@@ -9,9 +9,12 @@ use loopwright::scenario::files::{
     FileError, MANIFEST_NAME, Output, Replace, write_outputs, write_whole,
 };
 use loopwright::scenario::{
-    NEWEST_VERSION, Scenario, ScenarioError, SeasonDates, SkylineOrigin, SkylineSource, Theme,
-    Zone, standard_pressure_hpa,
+    NEWEST_VERSION, PickSettings, Scenario, ScenarioError, SeasonDates, SkylineOrigin,
+    SkylineSource, Theme, Zone, standard_pressure_hpa,
 };
+use loopwright::season::log::Log;
+use loopwright::season::purposes::Purpose;
+use loopwright::season::weather::Weather;
 use loopwright::season::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 use loopwright::sky::calendar::{CivilDate, DateTime, Precision, Weekday, parse_utc, utc_text};
 use loopwright::sky::delta_t::TimeTables;
@@ -247,6 +250,13 @@ fn a_file_of_version_1_keeps_its_meaning() {
         weekdays: Weekdays::from_days(&[Weekday::Monday]).unwrap(),
     };
     expected.sun_distance = degrees(30.0);
+    // What came later means, by its absence, what it meant before there was any.
+    expected.purpose = Purpose::Audience;
+    expected.weather = Weather::default();
+    expected.picks = PickSettings::default();
+    expected.lenses = Vec::new();
+    expected.log = Log::default();
+    expected.remarks.picks = None;
     expected.view.theme = Theme::Red;
     expected.view.turned = true;
     expected.remarks.scenario = note("a");
@@ -383,9 +393,9 @@ fn an_unknown_field_is_named_with_the_one_that_was_meant() {
         &["lattitude", "did you mean latitude?"],
     );
     assert_complains(
-        &spoilt("    skyline:", "    weather: (),\n    skyline:"),
+        &spoilt("    skyline:", "    humidity: (),\n    skyline:"),
         "8:5",
-        &["weather", "skyline", "conditions"],
+        &["humidity", "skyline", "conditions"],
     );
 }
 

@@ -22,9 +22,9 @@ const SIZE: egui::Vec2 = egui::Vec2::new(1280.0, 800.0);
 
 fn harness_of(scenario: Scenario, path: Option<&Path>) -> Harness<'static, Window> {
     let path = path.map(Path::to_owned);
-    let mut harness = Harness::builder()
-        .with_size(SIZE)
-        .build_eframe(|cc| Window::new(&cc.egui_ctx, scenario, path, Tt::from_days(9_800.0)).unwrap());
+    let mut harness = Harness::builder().with_size(SIZE).build_eframe(|cc| {
+        Window::new(&cc.egui_ctx, scenario, path, Tt::from_days(9_800.0)).unwrap()
+    });
     settle(&mut harness);
     harness
 }
@@ -59,22 +59,33 @@ fn instant(harness: &Harness<'_, Window>) -> Tt {
 
 fn type_date(harness: &mut Harness<'_, Window>, text: &str) {
     press(harness, Key::D);
-    harness.get_by_label("date and time at the site").type_text(text);
+    harness
+        .get_by_label("date and time at the site")
+        .type_text(text);
     press(harness, Key::Enter);
 }
 
 /// Altitude of the Sun's centre at the window's instant and site, degrees, from the engine.
 fn sun_altitude(harness: &Harness<'_, Window>) -> f64 {
     let plan = harness.state().state().plan.clone().unwrap();
-    let vantage = plan.sky.observer(&plan.scenario.site, instant(harness)).unwrap();
+    let vantage = plan
+        .sky
+        .observer(&plan.scenario.site, instant(harness))
+        .unwrap();
     let sun = vantage.place(Body::Sun).unwrap();
     vantage.horizontal(sun.apparent).unwrap().altitude.degrees()
 }
 
 fn assert_shows_elongation(harness: &Harness<'_, Window>) {
     let plan = harness.state().state().plan.clone().unwrap();
-    let vantage = plan.sky.observer(&plan.scenario.site, instant(harness)).unwrap();
-    let (mars, sun) = (vantage.place(Body::Mars).unwrap(), vantage.place(Body::Sun).unwrap());
+    let vantage = plan
+        .sky
+        .observer(&plan.scenario.site, instant(harness))
+        .unwrap();
+    let (mars, sun) = (
+        vantage.place(Body::Mars).unwrap(),
+        vantage.place(Body::Sun).unwrap(),
+    );
     let angle = mars.separation(&sun).degrees();
     let side = mars.side_of(&sun).word();
     harness.get_by_label(&format!("elongation {angle:.1}\u{b0} {side}"));
@@ -101,7 +112,9 @@ fn scrubbing_changes_the_readings_to_the_numbers_of_the_engine() {
     assert!((instant(&harness).days() - before.days() - 1.0).abs() < 1e-9);
     assert_shows_elongation(&harness);
 
-    harness.get_by_label("timeline, night of the season").set_value_accesskit(30.0);
+    harness
+        .get_by_label("timeline, night of the season")
+        .set_value_accesskit(30.0);
     settle(&mut harness);
     let season = harness.state().state().plan.clone().unwrap().season.span;
     assert!((instant(&harness).days() - season.from.days() - 30.0).abs() < 1.5);
@@ -118,7 +131,10 @@ fn scrubbing_changes_the_readings_to_the_numbers_of_the_engine() {
     }
     harness.drop_at(from + egui::vec2(120.0, 0.0));
     settle(&mut harness);
-    assert!(instant(&harness).days() - at.days() > 60.0, "the drag went from December to March");
+    assert!(
+        instant(&harness).days() - at.days() > 60.0,
+        "the drag went from December to March"
+    );
     assert_shows_elongation(&harness);
 }
 
@@ -126,9 +142,17 @@ fn scrubbing_changes_the_readings_to_the_numbers_of_the_engine() {
 fn holding_the_stars_their_places_over_the_horizon_stay() {
     let mut harness = harness();
     click(&mut harness, "hold the stars");
-    let regulus = StarCatalogue::embedded().unwrap().by_name("Regulus").unwrap();
+    let regulus = StarCatalogue::embedded()
+        .unwrap()
+        .by_name("Regulus")
+        .unwrap();
     let place = |harness: &Harness<'_, Window>| {
-        harness.state().moment().unwrap().axes.horizontal(regulus.direction)
+        harness
+            .state()
+            .moment()
+            .unwrap()
+            .axes
+            .horizontal(regulus.direction)
     };
     let (before, began) = (place(&harness), instant(&harness));
     for _ in 0..20 {
@@ -139,7 +163,7 @@ fn holding_the_stars_their_places_over_the_horizon_stay() {
         assert!((now.azimuth - before.azimuth).signed().abs().degrees() < 0.004);
     }
     let seconds = (instant(&harness).days() - began.days()) * 86_400.0;
-    assert!((seconds - 20.0 * 86_164.0989).abs() < 0.1, "{seconds}");
+    assert!((seconds - 20.0 * 86_164.098_9).abs() < 0.1, "{seconds}");
     assert_shows_elongation(&harness);
 }
 
@@ -153,7 +177,10 @@ fn holding_the_sun_its_altitude_stays() {
         let now = sun_altitude(&harness);
         assert!((now - before).abs() < 0.01, "{now} {before}");
     }
-    harness.get_by_label_contains(&format!("Sun {}\u{b0}", format!("{before:.1}").replace('-', "\u{2212}")));
+    harness.get_by_label_contains(&format!(
+        "Sun {}\u{b0}",
+        format!("{before:.1}").replace('-', "\u{2212}")
+    ));
 }
 
 #[test]
@@ -179,7 +206,10 @@ fn everything_can_be_done_with_the_keyboard() {
     let on_loop = view(&harness).sky.unwrap();
     press(&mut harness, Key::ArrowUp);
     assert!(view(&harness).sky.unwrap().degrees_across < on_loop.degrees_across);
-    assert!(harness.state().strip().unwrap().view.window == view(&harness).sky, "the strip follows");
+    assert!(
+        harness.state().strip().unwrap().view.window == view(&harness).sky,
+        "the strip follows"
+    );
     press(&mut harness, Key::W);
     assert_eq!(view(&harness).sky, None);
 
@@ -195,7 +225,12 @@ fn everything_can_be_done_with_the_keyboard() {
     press(&mut harness, Key::Home);
     press(&mut harness, Key::PageDown);
     let plan = harness.state().state().plan.clone().unwrap();
-    let first = plan.season.events.iter().find(|event| event.kind != EventKind::Perihelion).unwrap();
+    let first = plan
+        .season
+        .events
+        .iter()
+        .find(|event| event.kind != EventKind::Perihelion)
+        .unwrap();
     assert_eq!(instant(&harness), first.instant);
 
     type_date(&mut harness, "2027-02-12 18:50");
@@ -230,11 +265,16 @@ fn the_step_is_typed_and_told_when_wrong() {
     harness.get_by_label("length of a step").focus();
     settle(&mut harness);
     harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
-    harness.get_by_label("length of a step").type_text("a while");
+    harness
+        .get_by_label("length of a step")
+        .type_text("a while");
     press(&mut harness, Key::Enter);
     harness.get_by_label_contains("a while");
     click(&mut harness, "on by a step");
-    assert!(((instant(&harness).days() - before.days()) * 1_440.0 - 20.0).abs() < 1e-6, "the old step stays");
+    assert!(
+        ((instant(&harness).days() - before.days()) * 1_440.0 - 20.0).abs() < 1e-6,
+        "the old step stays"
+    );
 }
 
 #[test]
@@ -265,7 +305,11 @@ fn the_sun_caution_stands_while_the_sun_is_up_and_near() {
     type_date(&mut harness, "2029-05-13 12:00");
     harness.get_by_label_contains("Never point optics or eyes");
     type_date(&mut harness, "2029-05-13 00:30");
-    assert!(harness.query_by_label_contains("Never point optics or eyes").is_none());
+    assert!(
+        harness
+            .query_by_label_contains("Never point optics or eyes")
+            .is_none()
+    );
 }
 
 #[test]
@@ -275,7 +319,16 @@ fn an_edit_is_planned_undone_and_never_lost_silently() {
     press(&mut harness, Key::E);
     click(&mut harness, "Jupiter as the subject");
     click(&mut harness, "plan this season");
-    let subject = |harness: &Harness<'_, Window>| harness.state().state().plan.as_ref().unwrap().season.subject;
+    let subject = |harness: &Harness<'_, Window>| {
+        harness
+            .state()
+            .state()
+            .plan
+            .as_ref()
+            .unwrap()
+            .season
+            .subject
+    };
     assert_eq!(subject(&harness), Body::Jupiter);
     harness.get_by_label("not saved");
 
@@ -283,23 +336,41 @@ fn an_edit_is_planned_undone_and_never_lost_silently() {
     harness.get_by_label("latitude, \u{b0} north").focus();
     settle(&mut harness);
     harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
-    harness.get_by_label("latitude, \u{b0} north").type_text("95");
+    harness
+        .get_by_label("latitude, \u{b0} north")
+        .type_text("95");
     settle(&mut harness);
     harness.get_by_label_contains("from -90 to 90");
     press(&mut harness, Key::Enter);
-    assert!(harness.state().state().document.scenario.site.latitude.degrees() < 60.0);
+    assert!(
+        harness
+            .state()
+            .state()
+            .document
+            .scenario
+            .site
+            .latitude
+            .degrees()
+            < 60.0
+    );
 
     // Opening another season asks first.
     let path = folder.path().join("kept.ron");
     Scenario::embedded().unwrap().save(&path).unwrap();
     harness.key_press_modifiers(Modifiers::COMMAND, Key::O);
     settle(&mut harness);
-    harness.get_by_label("file").type_text(path.to_str().unwrap());
+    harness
+        .get_by_label("file")
+        .type_text(path.to_str().unwrap());
     press(&mut harness, Key::Enter);
     harness.get_by_label("The season has changes that are not saved.");
     assert_eq!(subject(&harness), Body::Jupiter);
     click(&mut harness, "go on editing");
-    assert!(harness.query_by_label("The season has changes that are not saved.").is_none());
+    assert!(
+        harness
+            .query_by_label("The season has changes that are not saved.")
+            .is_none()
+    );
 
     harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
     settle(&mut harness);
@@ -315,7 +386,9 @@ fn a_season_is_saved_and_read_back_with_its_theme() {
     click(&mut harness, "dark theme");
     harness.key_press_modifiers(Modifiers::COMMAND, Key::S);
     settle(&mut harness);
-    harness.get_by_label("file").type_text(path.to_str().unwrap());
+    harness
+        .get_by_label("file")
+        .type_text(path.to_str().unwrap());
     press(&mut harness, Key::Enter);
     let mut wanted = Scenario::embedded().unwrap();
     wanted.view.theme = loopwright::scenario::Theme::Dark;
@@ -328,7 +401,9 @@ fn a_missing_file_is_told_in_the_window() {
     let mut harness = harness();
     harness.key_press_modifiers(Modifiers::COMMAND, Key::O);
     settle(&mut harness);
-    harness.get_by_label("file").type_text("/nowhere/at-all.ron");
+    harness
+        .get_by_label("file")
+        .type_text("/nowhere/at-all.ron");
     press(&mut harness, Key::Enter);
     harness.get_by_label_contains("/nowhere/at-all.ron");
     assert_shows_elongation(&harness);
@@ -350,7 +425,10 @@ fn the_readings_are_copied_as_text() {
     let text = text.unwrap();
     let plan = harness.state().state().plan.clone().unwrap();
     assert!(text.starts_with(&plan.scenario.site.name), "{text}");
-    assert!(text.contains("\nelongation ") && text.contains(" au\n") && text.contains("Jupiter: "), "{text}");
+    assert!(
+        text.contains("\nelongation ") && text.contains(" au\n") && text.contains("Jupiter: "),
+        "{text}"
+    );
 }
 
 /// egui asks for a frame at once, later or never: an idle window must ask for none.
@@ -367,7 +445,10 @@ fn an_idle_window_repaints_nothing() {
     harness.step();
     harness.step();
     let root = harness.output().viewport_output[&egui::ViewportId::ROOT].clone();
-    assert!(root.repaint_delay < std::time::Duration::from_secs(1), "playing asks for frames");
+    assert!(
+        root.repaint_delay < std::time::Duration::from_secs(1),
+        "playing asks for frames"
+    );
     harness.key_press(Key::P);
     harness.step();
     settle(&mut harness);
@@ -393,10 +474,16 @@ fn run_without_window(display: Option<&str>, words: &[&str]) -> (Output, tempfil
 fn assert_sheet_instead(output: &Output, folder: &Path, reason: &str) {
     let error = String::from_utf8_lossy(&output.stderr);
     assert!(output.status.success(), "{error}");
-    let told: Vec<&str> = error.lines().filter(|line| line.contains("No window")).collect();
+    let told: Vec<&str> = error
+        .lines()
+        .filter(|line| line.contains("No window"))
+        .collect();
     assert_eq!(told.len(), 1, "{error}");
     assert!(told[0].contains(reason), "{error}");
-    assert!(!error.contains("panicked") && !error.contains(".rs:"), "{error}");
+    assert!(
+        !error.contains("panicked") && !error.contains(".rs:"),
+        "{error}"
+    );
     for name in ["strip.svg", "strip.png", "events.csv", "places.csv"] {
         assert!(folder.join("season-sheet").join(name).exists(), "{name}");
     }

@@ -3,9 +3,16 @@
 //! Exit status: 0 done, 1 could not do it, 2 wrong words. Standard output is data only; progress, cautions and errors go to
 //! standard error.
 
+mod advise;
 mod completions;
 mod events;
+mod frame;
+mod ground;
+mod log;
 mod new;
+mod nights;
+mod outings;
+mod picks;
 mod places;
 mod progress;
 mod seasons;
@@ -22,6 +29,7 @@ use std::process::ExitCode;
 use clap::{CommandFactory, FromArgMatches, Parser, Subcommand, ValueEnum};
 
 use crate::scenario::files::FileError;
+use crate::scenario::programme::ProgrammeError;
 use crate::scenario::{PlanError, ScenarioError};
 use crate::sheet::SheetError;
 use crate::sheet::table::TableFormat;
@@ -40,6 +48,8 @@ use crate::sky::{Tt, Utc};
   loopwright events --bodies mars,jupiter --from 2026-11 --to 2027-06
   loopwright year my-season.ron --from 2026-09-01 --format page
   loopwright seasons my-season.ron --from 2026 --to 2061 --want disc,high
+  loopwright nights my-season.ron              when the planet is in view, night by night
+  loopwright picks my-season.ron --count 6     dates to announce, with reserves and their chances
 
 Never point optics or eyes near the Sun. For work at night follow local rules, and ask qualified people about
 lasers, roofs and access to the site.")]
@@ -58,6 +68,11 @@ enum Command {
     Events(events::Options),
     Year(year::Options),
     Seasons(seasons::Options),
+    Nights(nights::Options),
+    Picks(picks::Options),
+    Advise(advise::Options),
+    Frame(frame::Options),
+    Log(log::Options),
     Completions(completions::Options),
 }
 
@@ -94,6 +109,8 @@ pub enum CliError {
     Plan(#[from] PlanError),
     #[error(transparent)]
     Year(#[from] crate::season::year::YearError),
+    #[error(transparent)]
+    Programme(#[from] ProgrammeError),
     #[error(transparent)]
     Sheet(#[from] SheetError),
     #[error(transparent)]
@@ -142,6 +159,11 @@ pub fn run(words: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(Command::Events(options)) => events::run(options),
         Some(Command::Year(options)) => year::run(options),
         Some(Command::Seasons(options)) => seasons::run(options),
+        Some(Command::Nights(options)) => nights::run(options),
+        Some(Command::Picks(options)) => picks::run(options),
+        Some(Command::Advise(options)) => advise::run(options),
+        Some(Command::Frame(options)) => frame::run(options),
+        Some(Command::Log(options)) => log::run(options),
         Some(Command::Completions(options)) => completions::run(options),
     };
     match result {

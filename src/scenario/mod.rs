@@ -11,7 +11,9 @@ mod checked;
 mod error;
 pub mod files;
 mod nearest;
+pub mod outings;
 mod plan;
+pub mod programme;
 mod skyline;
 mod v1;
 pub mod version;
@@ -24,11 +26,15 @@ use serde::{Deserialize, Serialize};
 pub use checked::{NotOneLine, OutOfRange};
 pub use error::ScenarioError;
 use files::FileError;
+pub use outings::{Camera, PickSettings};
 pub use plan::{Plan, PlanError};
 pub use skyline::{SkylineError, SkylineOrigin, SkylineSource};
 pub use version::NEWEST_VERSION;
 pub use zone::{LocalTime, UnknownZone, Zone};
 
+use crate::season::log::Log;
+use crate::season::purposes::Purpose;
+use crate::season::weather::Weather;
 use crate::season::{Conditions, Span};
 use crate::sky::calendar::CivilDate;
 use crate::sky::delta_t::TimeTables;
@@ -61,6 +67,16 @@ pub struct Scenario {
     pub conditions: Conditions,
     /// While the Sun is up and nearer to the subject than this, everything said carries the caution.
     pub sun_distance: Angle,
+    /// What nights are judged by.
+    pub purpose: Purpose,
+    /// Odds of clear nights; the placeholder where the user gave none.
+    pub weather: Weather,
+    /// How dates are chosen, and when the house is open.
+    pub picks: PickSettings,
+    /// What pictures are taken with.
+    pub lenses: Vec<Camera>,
+    /// What became of the nights.
+    pub log: Log,
     pub view: View,
     pub remarks: Remarks,
 }
@@ -104,6 +120,7 @@ pub struct Remarks {
     pub site: Option<String>,
     pub skyline: Option<String>,
     pub conditions: Option<String>,
+    pub picks: Option<String>,
     pub view: Option<String>,
 }
 
@@ -129,6 +146,12 @@ impl Scenario {
         if let Some(body) = document.subject_is_companion() {
             let message = v1::subject_among_companions(body);
             return Err(version::companions_error(text, &name, message));
+        }
+        if let Err(message) = document.check_log() {
+            return Err(version::log_error(text, &name, message));
+        }
+        if let Err(message) = document.check_picks() {
+            return Err(version::picks_error(text, &name, message));
         }
         document
             .into_scenario(&folder_of(origin))
@@ -194,6 +217,11 @@ impl Scenario {
             skyline: SkylineSource::flat(),
             conditions: Conditions::default(),
             sun_distance: DEFAULT_SUN_DISTANCE,
+            purpose: Purpose::default(),
+            weather: Weather::default(),
+            picks: PickSettings::default(),
+            lenses: Vec::new(),
+            log: Log::default(),
             view: View::default(),
             remarks: Remarks {
                 scenario: remark(
@@ -211,6 +239,7 @@ impl Scenario {
                 conditions: remark(
                     "For an audience with bare eyes. 20 degrees of altitude suits a telescope, sun_below -12 a photograph. hours: (from: \"19:00\", to: \"23:00\") and weekdays: [friday] narrow it to when people come.",
                 ),
+                picks: None,
                 view: remark("theme is light, dark or red; turned turns the strip round."),
             },
         }

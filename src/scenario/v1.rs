@@ -12,12 +12,17 @@ use super::checked::{
     Longitude, MoonDistance, PartName, Pressure, SiteName, SkylineAltitude, SunBelow, SunDistance,
     Temperature, Title,
 };
+use super::outings::{Camera, PickSettings};
 use super::skyline::{FileName, SkylineOrigin, SkylineSource};
 use super::version::NEWEST_VERSION;
 use super::{
     DEFAULT_SUN_DISTANCE, Remarks, Scenario, SeasonDates, SkylineError, Theme, View, Zone,
     usual_site,
 };
+use crate::season::log::Log;
+use crate::season::picks::{Measure, ReserveRule};
+use crate::season::purposes::Purpose;
+use crate::season::weather::Weather;
 use crate::season::{ClockTime, Conditions, Hours, MoonRule, Weekdays};
 use crate::sky::calendar::{CivilDate, Weekday};
 use crate::sky::refraction::Air;
@@ -52,8 +57,22 @@ pub(super) struct Document {
     conditions: ConditionsEntry,
     #[serde(default)]
     sun_distance: Option<SunDistance>,
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    purpose: Option<Purpose>,
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    weather: Option<Weather>,
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    picks: Option<PicksEntry>,
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    lenses: Vec<Camera>,
+    #[serde(default, skip_serializing_if = "log_is_empty")]
+    log: Log,
     #[serde(default)]
     view: ViewEntry,
+}
+
+fn log_is_empty(log: &Log) -> bool {
+    log.entries().is_empty()
 }
 
 impl Document {
@@ -61,6 +80,205 @@ impl Document {
     pub(super) fn subject_is_companion(&self) -> Option<Body> {
         let subject = self.subject.0;
         self.companions.0.contains(&subject).then_some(subject)
+    }
+
+    /// First and last night of the season.
+    fn nights(&self) -> Result<Option<(CivilDate, CivilDate)>, String> {
+        self.season
+            .as_ref()
+            .map(|SeasonEntry(season)| {
+                let last = season.to.plus_days(-1);
+                last.map(|last| (season.from, last))
+                    .map_err(|error| error.to_string())
+            })
+            .transpose()
+    }
+
+    /// Every entry lies in the season, every time in its night.
+    pub(super) fn check_log(&self) -> Result<(), String> {
+        if let Some((from, to)) = self.nights()? {
+            let checked = self.log.check_season(from, to);
+            checked.map_err(|error| error.to_string())?;
+        }
+        let longitude = Angle::from_degrees(self.site.longitude.into());
+        let checked = self.log.check_times(longitude);
+        checked.map_err(|error| error.to_string())
+    }
+
+    /// Dates of the picks lie in the season.
+    pub(super) fn check_picks(&self) -> Result<(), String> {
+        let (Some((first, last)), Some(entry)) = (self.nights()?, &self.picks) else {
+            return Ok(());
+        };
+        let raw = &entry.0;
+        let named = [raw.from, raw.to.and_then(|to| to.plus_days(-1).ok())];
+        let mut all = named
+            .into_iter()
+            .flatten()
+            .chain(raw.must_have.iter().copied());
+        match all.find(|date| !(first..=last).contains(date)) {
+            Some(date) => Err(format!(
+                "picks: {date} is outside the season, whose nights run from {first} to {last}"
+            )),
+            None => Ok(()),
+        }
+    }
+}
+
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[serde(rename = "Picks", deny_unknown_fields, default)]
+struct RawPicks {
+    #[serde(skip_serializing_if = "Option::is_none")]
+    remark: Option<String>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    count: Option<u16>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    measure: Option<Measure>,
+    /// The part of the season that the path covers: its first day, and the day after its last.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    from: Option<CivilDate>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    to: Option<CivilDate>,
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    must_have: Vec<CivilDate>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    reserve_rule: Option<ReserveRule>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    reserves: Option<u8>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    evenness: Option<f64>,
+    /// Nights on which the house is open although the weekday is not.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    open: Vec<CivilDate>,
+    /// Nights on which it is closed although the weekday is open.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    closed: Vec<CivilDate>,
+}
+
+/// Most dates and reserves that the choice takes.
+const MOST_PICKS: u16 = 400;
+const MOST_RESERVES: u8 = 20;
+const MOST_RESERVE_DAYS: u16 = 90;
+
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[serde(try_from = "RawPicks", into = "RawPicks")]
+struct PicksEntry(RawPicks);
+
+impl TryFrom<RawPicks> for PicksEntry {
+    type Error = String;
+    fn try_from(raw: RawPicks) -> Result<Self, String> {
+        let within = |what: &str, value: Option<u16>, least: u16, most: u16| match value {
+            Some(value) if !(least..=most).contains(&value) => Err(format!(
+                "picks: {what} {value} is out of range: use {least} to {most}"
+            )),
+            _ => Ok(()),
+        };
+        within("count", raw.count, 1, MOST_PICKS)?;
+        within(
+            "reserves",
+            raw.reserves.map(u16::from),
+            0,
+            MOST_RESERVES.into(),
+        )?;
+        if let Some(ReserveRule::WithinDays(days)) = raw.reserve_rule {
+            within("within_days", Some(days), 1, MOST_RESERVE_DAYS)?;
+        }
+        if let Some(evenness) = raw.evenness
+            && !(0.0..=1e6).contains(&evenness)
+        {
+            return Err(format!(
+                "picks: evenness {evenness} is out of range: use 0 (any steps) to 1000000"
+            ));
+        }
+        if let (Some(from), Some(to)) = (raw.from, raw.to)
+            && from >= to
+        {
+            return Err(format!(
+                "picks: from {from} is not before to {to}; the part begins with from and ends before to"
+            ));
+        }
+        for date in &raw.closed {
+            if raw.open.contains(date) || raw.must_have.contains(date) {
+                return Err(format!(
+                    "picks: {date} is closed, and open or must_have as well; keep one"
+                ));
+            }
+        }
+        Ok(PicksEntry(raw))
+    }
+}
+
+impl From<PicksEntry> for RawPicks {
+    fn from(entry: PicksEntry) -> RawPicks {
+        entry.0
+    }
+}
+
+impl PicksEntry {
+    fn into_settings(self) -> PickSettings {
+        let default = PickSettings::default();
+        let raw = self.0;
+        PickSettings {
+            count: raw.count.map_or(default.count, usize::from),
+            measure: raw.measure.unwrap_or(default.measure),
+            from: raw.from,
+            to: raw.to,
+            must_have: raw.must_have,
+            reserve_rule: raw.reserve_rule.unwrap_or(default.reserve_rule),
+            reserves: raw.reserves.map_or(default.reserves, usize::from),
+            evenness: raw.evenness.unwrap_or(default.evenness),
+            open: raw.open,
+            closed: raw.closed,
+        }
+    }
+
+    /// `None` where nothing is said that the defaults do not say.
+    fn from_settings(
+        settings: &PickSettings,
+        remark: Option<String>,
+    ) -> Result<Option<Self>, String> {
+        if *settings == PickSettings::default() && remark.is_none() {
+            return Ok(None);
+        }
+        let raw = RawPicks {
+            remark,
+            count: Some(checked(settings.count)?),
+            measure: Some(settings.measure),
+            from: settings.from,
+            to: settings.to,
+            must_have: settings.must_have.clone(),
+            reserve_rule: Some(settings.reserve_rule),
+            reserves: Some(checked(settings.reserves)?),
+            evenness: Some(settings.evenness),
+            open: settings.open.clone(),
+            closed: settings.closed.clone(),
+        };
+        checked(raw).map(Some)
+    }
+}
+
+/// Days named in so many words; none at all is a mistake.
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[serde(try_from = "Vec<Weekday>", into = "Vec<Weekday>")]
+struct WeekdaysEntry(Vec<Weekday>);
+
+impl TryFrom<Vec<Weekday>> for WeekdaysEntry {
+    type Error = String;
+    fn try_from(days: Vec<Weekday>) -> Result<Self, String> {
+        if days.is_empty() {
+            Err(
+                "weekdays: no day is allowed, so no night can be: name days, or leave weekdays out to allow every day"
+                    .to_owned(),
+            )
+        } else {
+            Ok(WeekdaysEntry(days))
+        }
+    }
+}
+
+impl From<WeekdaysEntry> for Vec<Weekday> {
+    fn from(entry: WeekdaysEntry) -> Vec<Weekday> {
+        entry.0
     }
 }
 
@@ -266,9 +484,9 @@ struct ConditionsEntry {
     moon: Option<MoonEntry>,
     #[serde(skip_serializing_if = "Option::is_none")]
     hours: Option<HoursEntry>,
-    /// Empty: every day.
-    #[serde(skip_serializing_if = "Vec::is_empty")]
-    weekdays: Vec<Weekday>,
+    /// `None`: every day.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    weekdays: Option<WeekdaysEntry>,
 }
 
 #[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
@@ -287,7 +505,7 @@ impl Default for ConditionsEntry {
             sun_below: None,
             moon: Some(MoonEntry::default()),
             hours: None,
-            weekdays: Vec::new(),
+            weekdays: None,
         }
     }
 }
@@ -377,6 +595,11 @@ impl Document {
             skyline,
             conditions,
             sun_distance,
+            purpose,
+            weather,
+            picks,
+            lenses,
+            log,
             view,
         } = self;
         let season = season.map(|entry| entry.0);
@@ -387,6 +610,7 @@ impl Document {
             site: site.remark.clone(),
             skyline: skyline.raw.remark.clone(),
             conditions: conditions.remark.clone(),
+            picks: picks.as_ref().and_then(|picks| picks.0.remark.clone()),
             view: view.remark,
         };
         Ok(Scenario {
@@ -407,6 +631,11 @@ impl Document {
             sun_distance: sun_distance.map_or(DEFAULT_SUN_DISTANCE, |angle| {
                 Angle::from_degrees(angle.into())
             }),
+            purpose: purpose.unwrap_or_default(),
+            weather: weather.unwrap_or_default(),
+            picks: picks.map(PicksEntry::into_settings).unwrap_or_default(),
+            lenses,
+            log,
             view: View {
                 theme: view.theme,
                 turned: view.turned,
@@ -431,6 +660,11 @@ impl Document {
             skyline,
             conditions,
             sun_distance,
+            purpose,
+            weather,
+            picks,
+            lenses,
+            log,
             view,
             remarks,
         } = scenario;
@@ -450,12 +684,19 @@ impl Document {
             skyline: SkylineEntry::from_source(skyline, folder, remarks.skyline.clone())?,
             conditions: ConditionsEntry::from_conditions(conditions, remarks.conditions.clone())?,
             sun_distance: Some(degrees(*sun_distance)?),
+            purpose: (*purpose != Purpose::default()).then_some(*purpose),
+            weather: (*weather != Weather::default()).then(|| weather.clone()),
+            picks: PicksEntry::from_settings(picks, remarks.picks.clone())?,
+            lenses: lenses.clone(),
+            log: log.clone(),
             view: ViewEntry {
                 remark: remarks.view.clone(),
                 theme: view.theme,
                 turned: view.turned,
             },
         };
+        document.check_log()?;
+        document.check_picks()?;
         match document.subject_is_companion() {
             Some(body) => Err(subject_among_companions(body)),
             None => Ok(document),
@@ -565,7 +806,10 @@ impl ConditionsEntry {
                 .map_or(default.sun_below, |given| angle(given.into())),
             moon: self.moon.map(MoonEntry::into_rule),
             hours: self.hours.map(|entry| entry.0),
-            weekdays: Weekdays::from_days(&self.weekdays).unwrap_or(Weekdays::ALL),
+            weekdays: self
+                .weekdays
+                .and_then(|days| Weekdays::from_days(&days.0))
+                .unwrap_or(Weekdays::ALL),
         }
     }
 
@@ -586,9 +830,9 @@ impl ConditionsEntry {
                 })
                 .transpose()?,
             weekdays: if conditions.weekdays == Weekdays::ALL {
-                Vec::new()
+                None
             } else {
-                conditions.weekdays.iter().collect()
+                Some(checked(conditions.weekdays.iter().collect::<Vec<_>>())?)
             },
         })
     }

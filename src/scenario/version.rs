@@ -1,7 +1,7 @@
 //! From text to the newest document: reads the version, picks that version's struct, and migrates up.
 //!
 //! # How the format grows
-//! - What is added (lenses, weather, picks, log, cues, circles) comes as a new optional field with a default that means what
+//! - What is added (as lenses, weather, picks and log were; later cues, circles) comes as a new optional field with a default that means what
 //!   its absence meant before: old files keep opening, and the version stays. An older program refuses a file that uses
 //!   the field, naming it, rather than lose it on saving.
 //! - Where a field changes its meaning or its name, the version goes up: the new struct goes into a new module `v2`, with
@@ -82,7 +82,26 @@ pub(super) fn parse(text: &str, origin: &str) -> Result<Newest, ScenarioError> {
 
 /// A complaint about the companions, with their place in the text.
 pub(super) fn companions_error(text: &str, origin: &str, message: String) -> ScenarioError {
-    let (line, column) = match read::<CompanionsAt>(text) {
+    error_at::<CompanionsAt>(text, origin, message)
+}
+
+/// The same about the log.
+pub(super) fn log_error(text: &str, origin: &str, message: String) -> ScenarioError {
+    error_at::<LogAt>(text, origin, message)
+}
+
+/// The same about the picks.
+pub(super) fn picks_error(text: &str, origin: &str, message: String) -> ScenarioError {
+    error_at::<PicksAt>(text, origin, message)
+}
+
+/// A complaint at the place where reading a struct stops.
+fn error_at<'de, T: Deserialize<'de>>(
+    text: &'de str,
+    origin: &str,
+    message: String,
+) -> ScenarioError {
+    let (line, column) = match read::<T>(text) {
         Err(error) => (error.span.start.line, error.span.start.col),
         Ok(_) => (1, 1),
     };
@@ -124,6 +143,22 @@ fn stop_at_number<'de, D: Deserializer<'de>>(deserializer: D) -> Result<(), D::E
 struct CompanionsAt {
     #[serde(rename = "companions", deserialize_with = "stop_here")]
     _companions: (),
+}
+
+/// Fails at the log, to tell its place.
+#[derive(Deserialize)]
+#[serde(rename = "Scenario")]
+struct LogAt {
+    #[serde(rename = "log", deserialize_with = "stop_here")]
+    _log: (),
+}
+
+/// Fails at the picks, to tell their place.
+#[derive(Deserialize)]
+#[serde(rename = "Scenario")]
+struct PicksAt {
+    #[serde(rename = "picks", deserialize_with = "stop_here")]
+    _picks: (),
 }
 
 fn stop_here<'de, D: Deserializer<'de>>(deserializer: D) -> Result<(), D::Error> {

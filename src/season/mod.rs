@@ -22,6 +22,7 @@ pub mod nights;
 mod openings;
 pub mod outlook;
 pub mod picks;
+pub mod planner;
 pub mod purposes;
 pub mod quality;
 mod search;

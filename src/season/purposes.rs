@@ -3,16 +3,23 @@
 //! The numbers are common practice, from memory; every one is shown and may be changed. The Sun is down in all of them.
 //! For inner planets altitude and darkness come from the visibility model of [`super::visibility`] instead.
 
+use serde::{Deserialize, Serialize};
+
 use super::conditions::{Conditions, MoonRule, Weekdays};
 use super::visibility::{Haze, Viewer};
 use crate::sky::{Angle, Body};
 
 /// What the user goes out for.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+#[derive(
+    Clone, Copy, Debug, Default, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize,
+)]
+#[serde(rename_all = "snake_case")]
 pub enum Purpose {
     /// People who look with their own eyes.
+    #[default]
     Audience,
     /// People who queue at a telescope.
+    #[serde(rename = "audience_telescope")]
     AudienceAtTelescope,
     /// Photographs of the path among the stars.
     Path,

@@ -33,7 +33,8 @@ struct Motion {
 impl Motion {
     fn apparent(place: &Place) -> Motion {
         let vector = place.apparent * place.distance_au;
-        let rate = place.apparent_rate() * place.distance_au + place.apparent * place.distance_rate();
+        let rate =
+            place.apparent_rate() * place.distance_au + place.apparent * place.distance_rate();
         Motion::of(place, vector, rate)
     }
 

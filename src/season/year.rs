@@ -373,11 +373,11 @@ fn time_outside(
     let least = true_from_apparent(conditions.least_altitude, &tracks.site().air).sin();
     let dark = conditions.sun_below.sin();
     let (from, to) = (night.span.from.days(), night.span.to.days());
-    let first = ((from - tracks.from_days()) / SAMPLE_STEP).ceil().max(0.0) as usize;
+    let first = ((from - tracks.start_days()) / SAMPLE_STEP).ceil().max(0.0) as usize;
     let samples = tracks.sampled.subject.iter().zip(&tracks.sampled.sun);
     let (mut before, mut after) = (0_u32, 0_u32);
     for (k, (&subject, &sun)) in samples.enumerate().skip(first) {
-        let t = tracks.from_days() + k as f64 * SAMPLE_STEP;
+        let t = tracks.start_days() + k as f64 * SAMPLE_STEP;
         if t >= to {
             break;
         }

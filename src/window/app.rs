@@ -9,20 +9,22 @@ use super::fields::{Field, PathForm, SeasonForm};
 use super::jobs::{Kind, Worker};
 use super::keys::{self, BINDINGS, Command};
 use super::reading_words::Column;
+use super::readings_pane;
 use super::state::{Action, Effect, Panel, State};
 use super::strip_pane::{self, StripMade, StripPane};
 use super::theme::{MARGIN, TITLE, colour, dress, font, fonts, palette, theme_word};
 use super::time_words::{local_text, read_local, universal_text, zone_text};
 use super::timeline_pane::{self, NightsMade, TimelineMade, TimelinePane, TimelineWanted};
 use super::widgets::{Standing, caption, caution, word};
-use super::readings_pane;
-use crate::chart::{Font, Outline, OverlayStyle, Palette, Rect, Role, Scene, StripView, note_boxes, skyline_overlay};
+use crate::chart::{
+    Font, Outline, OverlayStyle, Palette, Rect, Role, Scene, StripView, note_boxes, skyline_overlay,
+};
 use crate::scenario::{Plan, PlanError, Scenario, Theme};
 use crate::season::hold::{Hold, Step};
 use crate::season::moment::{Moment, Tonight, Watch, moment, night_at, tonight};
 use crate::sheet::words::LocalClock;
-use crate::sky::place::SkyError;
 use crate::sky::Tt;
+use crate::sky::place::SkyError;
 
 /// Width of the column of readings and of what opens beside the strip, screen points at text scale 1.
 const READINGS_WIDTH: f32 = 268.0;
@@ -85,7 +87,12 @@ impl Window {
     ///
     /// # Errors
     /// The system gives no thread to work in.
-    pub fn new(ctx: &egui::Context, scenario: Scenario, path: Option<PathBuf>, now: Tt) -> std::io::Result<Self> {
+    pub fn new(
+        ctx: &egui::Context,
+        scenario: Scenario,
+        path: Option<PathBuf>,
+        now: Tt,
+    ) -> std::io::Result<Self> {
         ctx.set_fonts(fonts());
         // Keys of ours change the size of text.
         ctx.options_mut(|options| options.zoom_with_keyboard = false);
@@ -165,8 +172,13 @@ impl Window {
     }
 
     fn copy_readings(&mut self, ctx: &egui::Context) {
-        let Some((plan, column)) = self.state.plan.clone().zip(self.readings()) else { return };
-        let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+        let Some((plan, column)) = self.state.plan.clone().zip(self.readings()) else {
+            return;
+        };
+        let clock = LocalClock {
+            scenario: &plan.scenario,
+            sky: &plan.sky,
+        };
         let instant = self.state.view.instant;
         let heading = format!(
             "{}\n{} ({})",
@@ -180,14 +192,21 @@ impl Window {
 
     fn tonight_now(&self) -> Option<&Tonight> {
         let (plan, tonight) = self.tonight.as_ref()?;
-        let is_of_plan = self.state.plan.as_ref().is_some_and(|now| Arc::ptr_eq(now, plan));
+        let is_of_plan = self
+            .state
+            .plan
+            .as_ref()
+            .is_some_and(|now| Arc::ptr_eq(now, plan));
         (is_of_plan && tonight.span.contains(self.state.view.instant)).then_some(tonight)
     }
 
     /// Size of text and of what goes with it: larger windows have larger letters, though not in proportion, and in steps,
     /// so that resizing does not ask for letters of ever new sizes.
     fn scale(&self, window: egui::Vec2) -> f32 {
-        let grown = (window.x * window.y / (1280.0 * 800.0)).max(0.01).powf(0.25).clamp(1.0, 1.4);
+        let grown = (window.x * window.y / (1280.0 * 800.0))
+            .max(0.01)
+            .powf(0.25)
+            .clamp(1.0, 1.4);
         (grown * self.state.view.text_scale() * 20.0).round() / 20.0
     }
 
@@ -215,14 +234,20 @@ impl Window {
             Done::Nights(Ok(nights)) => self.timeline.take_nights(*nights),
             Done::Timeline(made) => self.timeline.take(*made),
             Done::Strip(made) => self.strip.take(*made),
-            Done::Tonight(_, Err(error)) | Done::Nights(Err(error)) => self.state.complain(error.to_string()),
+            Done::Tonight(_, Err(error)) | Done::Nights(Err(error)) => {
+                self.state.complain(error.to_string())
+            }
         }
     }
 
     /// Asks the worker for whatever is shown and not yet there.
     fn ask(&mut self) {
         let scenario = &self.state.document.scenario;
-        if !self.asked_plan.as_ref().is_some_and(|asked| Arc::ptr_eq(asked, scenario)) {
+        if !self
+            .asked_plan
+            .as_ref()
+            .is_some_and(|asked| Arc::ptr_eq(asked, scenario))
+        {
             self.asked_plan = Some(Arc::clone(scenario));
             let (scenario, now) = (Arc::clone(scenario), self.now);
             self.worker.ask(Kind::Plan, move || {
@@ -230,7 +255,9 @@ impl Window {
                 Done::Plan(scenario, plan)
             });
         }
-        let Some(plan) = self.state.plan.clone() else { return };
+        let Some(plan) = self.state.plan.clone() else {
+            return;
+        };
         if let Some(view) = self.strip.wanted.clone() {
             let wanted = (Arc::clone(&plan), view);
             let is_asked = self
@@ -239,28 +266,46 @@ impl Window {
                 .is_some_and(|(of, view)| Arc::ptr_eq(of, &wanted.0) && *view == wanted.1);
             if !is_asked {
                 self.asked_strip = Some(wanted.clone());
-                self.worker.ask(Kind::Strip, move || Done::Strip(Box::new(StripMade::new(wanted.0, wanted.1))));
+                self.worker.ask(Kind::Strip, move || {
+                    Done::Strip(Box::new(StripMade::new(wanted.0, wanted.1)))
+                });
             }
         }
-        if !self.asked_nights.as_ref().is_some_and(|asked| Arc::ptr_eq(asked, &plan)) {
+        if !self
+            .asked_nights
+            .as_ref()
+            .is_some_and(|asked| Arc::ptr_eq(asked, &plan))
+        {
             self.asked_nights = Some(Arc::clone(&plan));
             let plan = Arc::clone(&plan);
-            self.worker.ask(Kind::Nights, move || Done::Nights(NightsMade::new(plan).map(Box::new)));
+            self.worker.ask(Kind::Nights, move || {
+                Done::Nights(NightsMade::new(plan).map(Box::new))
+            });
         }
-        if let Some((nights, wanted)) = self.timeline.nights().cloned().zip(self.timeline.wanted.clone()) {
+        if let Some((nights, wanted)) = self
+            .timeline
+            .nights()
+            .cloned()
+            .zip(self.timeline.wanted.clone())
+        {
             let is_asked = self
                 .asked_timeline
                 .as_ref()
                 .is_some_and(|(of, asked)| Arc::ptr_eq(of, &nights) && *asked == wanted);
             if !is_asked {
                 self.asked_timeline = Some((Arc::clone(&nights), wanted.clone()));
-                self.worker.ask(Kind::Timeline, move || Done::Timeline(Box::new(TimelineMade::new(nights, wanted))));
+                self.worker.ask(Kind::Timeline, move || {
+                    Done::Timeline(Box::new(TimelineMade::new(nights, wanted)))
+                });
             }
         }
         self.moment_of(&plan);
         let instant = self.state.view.instant;
         let night = night_at(&plan.sky, &plan.scenario.site, instant).from;
-        let is_asked = self.asked_tonight.as_ref().is_some_and(|(of, from)| Arc::ptr_eq(of, &plan) && *from == night);
+        let is_asked = self
+            .asked_tonight
+            .as_ref()
+            .is_some_and(|(of, from)| Arc::ptr_eq(of, &plan) && *from == night);
         if !is_asked {
             self.asked_tonight = Some((Arc::clone(&plan), night));
             self.worker.ask(Kind::Tonight, move || {
@@ -273,8 +318,10 @@ impl Window {
     /// Works out the moment shown: far less than a frame.
     fn moment_of(&mut self, plan: &Arc<Plan>) {
         let instant = self.state.view.instant;
-        let fits =
-            self.moment.as_ref().is_some_and(|made| Arc::ptr_eq(&made.plan, plan) && made.instant == instant);
+        let fits = self
+            .moment
+            .as_ref()
+            .is_some_and(|made| Arc::ptr_eq(&made.plan, plan) && made.instant == instant);
         if fits {
             return;
         }
@@ -285,7 +332,11 @@ impl Window {
                 None
             }
         };
-        self.moment = Some(MomentMade { plan: Arc::clone(plan), instant, moment });
+        self.moment = Some(MomentMade {
+            plan: Arc::clone(plan),
+            instant,
+            moment,
+        });
     }
 
     fn play(&mut self, ctx: &egui::Context) {
@@ -331,18 +382,36 @@ impl Window {
     fn heading(&self, ui: &mut Ui, colours: &Palette, scale: f32) -> Vec<Action> {
         let mut actions = Vec::new();
         ui.horizontal(|ui| {
-            let shown = self.state.plan.as_ref().map_or(&*self.state.document.scenario, |plan| &plan.scenario);
+            let shown = self
+                .state
+                .plan
+                .as_ref()
+                .map_or(&*self.state.document.scenario, |plan| &plan.scenario);
             ui.with_layout(egui::Layout::right_to_left(egui::Align::Center), |ui| {
                 let view = &self.state.view;
-                let panel = |panel: Panel| if view.panel == panel { Standing::Chosen } else { Standing::Open };
+                let panel = |panel: Panel| {
+                    if view.panel == panel {
+                        Standing::Chosen
+                    } else {
+                        Standing::Open
+                    }
+                };
                 let toggled = |panel: Panel| {
-                    Action::ShowPanel(if view.panel == panel { Panel::None } else { panel })
+                    Action::ShowPanel(if view.panel == panel {
+                        Panel::None
+                    } else {
+                        panel
+                    })
                 };
                 if word(ui, colours, "keys", "keys, a list", panel(Panel::Keys)).clicked() {
                     actions.push(toggled(Panel::Keys));
                 }
                 for theme in [Theme::Red, Theme::Dark, Theme::Light] {
-                    let standing = if view.theme == theme { Standing::Chosen } else { Standing::Open };
+                    let standing = if view.theme == theme {
+                        Standing::Chosen
+                    } else {
+                        Standing::Open
+                    };
                     let name = format!("{} theme", theme_word(theme));
                     if word(ui, colours, theme_word(theme), &name, standing).clicked() {
                         actions.push(Action::SetTheme(theme));
@@ -355,12 +424,21 @@ impl Window {
                 if word(ui, colours, "open", "open a season", panel(Panel::Open)).clicked() {
                     actions.push(toggled(Panel::Open));
                 }
-                if word(ui, colours, "season", "season, edit it", panel(Panel::Season)).clicked() {
+                if word(
+                    ui,
+                    colours,
+                    "season",
+                    "season, edit it",
+                    panel(Panel::Season),
+                )
+                .clicked()
+                {
                     actions.push(toggled(Panel::Season));
                 }
                 ui.add_space(14.0 * scale);
                 ui.with_layout(egui::Layout::left_to_right(egui::Align::Center), |ui| {
-                    let title = egui::RichText::new(&shown.title).font(font(Font::SerifItalic, TITLE * scale));
+                    let title = egui::RichText::new(&shown.title)
+                        .font(font(Font::SerifItalic, TITLE * scale));
                     ui.add(egui::Label::new(title).truncate().selectable(false));
                     ui.add_space(6.0 * scale);
                     if self.state.document.is_changed() {
@@ -385,10 +463,26 @@ impl Window {
             if word(ui, colours, "save them", "save them", Standing::Command).clicked() {
                 actions.push(self.save());
             }
-            if word(ui, colours, "give them up", "give them up", Standing::Command).clicked() {
+            if word(
+                ui,
+                colours,
+                "give them up",
+                "give them up",
+                Standing::Command,
+            )
+            .clicked()
+            {
                 actions.push(Action::Discard);
             }
-            if word(ui, colours, "go on editing", "go on editing", Standing::Command).clicked() {
+            if word(
+                ui,
+                colours,
+                "go on editing",
+                "go on editing",
+                Standing::Command,
+            )
+            .clicked()
+            {
                 actions.push(Action::Stay);
             }
         });
@@ -402,23 +496,60 @@ impl Window {
         let view = &self.state.view;
         ui.horizontal(|ui| {
             ui.with_layout(egui::Layout::right_to_left(egui::Align::Center), |ui| {
-                let standing = if view.skyline { Standing::Chosen } else { Standing::Open };
+                let standing = if view.skyline {
+                    Standing::Chosen
+                } else {
+                    Standing::Open
+                };
                 if word(ui, colours, "skyline", "skyline over the strip", standing).clicked() {
                     actions.push(Action::ShowSkyline(!view.skyline));
                 }
-                if word(ui, colours, "turn round", "turn the strip round", Standing::Open).clicked() {
+                if word(
+                    ui,
+                    colours,
+                    "turn round",
+                    "turn the strip round",
+                    Standing::Open,
+                )
+                .clicked()
+                {
                     actions.push(Action::TurnRound);
                 }
-                let whole = if view.sky.is_none() { Standing::Chosen } else { Standing::Open };
-                if word(ui, colours, "whole season", "whole season on the strip", whole).clicked() {
+                let whole = if view.sky.is_none() {
+                    Standing::Chosen
+                } else {
+                    Standing::Open
+                };
+                if word(
+                    ui,
+                    colours,
+                    "whole season",
+                    "whole season on the strip",
+                    whole,
+                )
+                .clicked()
+                {
                     actions.push(Action::ShowSky(None));
                 }
-                if let Some(plan) = self.state.plan.as_ref().filter(|plan| !plan.season.loops.is_empty())
-                    && word(ui, colours, "the loop", "the loop on the strip", Standing::Open).clicked()
+                if let Some(plan) = self
+                    .state
+                    .plan
+                    .as_ref()
+                    .filter(|plan| !plan.season.loops.is_empty())
+                    && word(
+                        ui,
+                        colours,
+                        "the loop",
+                        "the loop on the strip",
+                        Standing::Open,
+                    )
+                    .clicked()
                 {
                     actions.extend(keys::fit_loop(view, plan, &self.strip));
                 }
-                ui.with_layout(egui::Layout::left_to_right(egui::Align::Center), |ui| self.status(ui, colours));
+                ui.with_layout(egui::Layout::left_to_right(egui::Align::Center), |ui| {
+                    self.status(ui, colours)
+                });
             });
         });
         actions
@@ -426,21 +557,34 @@ impl Window {
 
     fn status(&self, ui: &mut Ui, colours: &Palette) {
         let is_old = self.worker.is_busy(Kind::Plan)
-            || self.state.plan.as_ref().is_some_and(|plan| !self.strip.is_current(plan));
+            || self
+                .state
+                .plan
+                .as_ref()
+                .is_some_and(|plan| !self.strip.is_current(plan));
         let hover = self.strip.hover.as_ref().or(self.timeline.hover.as_ref());
         let notice = self.state.notice.as_ref();
-        let missed = self.state.view.missed.map(|missed| super::capitalised(&missed.to_string()) + ".");
+        let missed = self
+            .state
+            .view
+            .missed
+            .map(|missed| super::capitalised(&missed.to_string()) + ".");
         let words = match (notice, hover) {
             (Some(notice), _) if notice.is_error => {
                 let ink = colour(colours.colour(Role::Caution));
                 egui::RichText::new(&notice.text).color(ink)
             }
             (_, Some(hover)) => egui::RichText::new(hover),
-            _ if self.worker.is_busy(Kind::Plan) => egui::RichText::new("Planning the season \u{2026}").weak(),
+            _ if self.worker.is_busy(Kind::Plan) => {
+                egui::RichText::new("Planning the season \u{2026}").weak()
+            }
             _ if is_old => egui::RichText::new("Drawing \u{2026}").weak(),
             (_, None) if missed.is_some() => egui::RichText::new(missed.unwrap_or_default()),
             (Some(notice), None) => egui::RichText::new(&notice.text).weak(),
-            (None, None) => egui::RichText::new("Drag the strip, turn the wheel, press on the path to go to that day").weak(),
+            (None, None) => egui::RichText::new(
+                "Drag the strip, turn the wheel, press on the path to go to that day",
+            )
+            .weak(),
         };
         ui.add(egui::Label::new(words).truncate().selectable(false));
     }
@@ -448,27 +592,47 @@ impl Window {
     /// Time and how it is stepped.
     fn time_line(&mut self, ui: &mut Ui, colours: &Palette, scale: f32) -> Vec<Action> {
         let mut actions = Vec::new();
-        let Some(plan) = self.state.plan.clone() else { return actions };
+        let Some(plan) = self.state.plan.clone() else {
+            return actions;
+        };
         let view = self.state.view.clone();
         let (scenario, tables) = (&plan.scenario, plan.sky.tables());
         ui.horizontal_wrapped(|ui| {
-            let clock = LocalClock { scenario, sky: &plan.sky };
-            let weekday = clock.date(view.instant).map_or("", |date| date.weekday().name());
+            let clock = LocalClock {
+                scenario,
+                sky: &plan.sky,
+            };
+            let weekday = clock
+                .date(view.instant)
+                .map_or("", |date| date.weekday().name());
             caption(ui, weekday);
             let shown = local_text(scenario, tables, view.instant);
             let width = 128.0 * scale;
-            let typed = self.date_field.show(ui, colours, "date and time at the site", width, &shown, |text| {
-                read_local(scenario, tables, view.instant, text)
-            });
+            let typed = self.date_field.show(
+                ui,
+                colours,
+                "date and time at the site",
+                width,
+                &shown,
+                |text| read_local(scenario, tables, view.instant, text),
+            );
             actions.extend(typed.map(Action::GoTo));
             caption(ui, &zone_text(scenario, tables, view.instant));
-            caption(ui, &universal_words(&shown, &universal_text(tables, view.instant)));
+            caption(
+                ui,
+                &universal_words(&shown, &universal_text(tables, view.instant)),
+            );
             ui.add_space(10.0 * scale);
             caption(ui, "step");
             let width = 62.0 * scale;
-            let typed = self.step_field.show(ui, colours, "length of a step", width, &view.step.to_string(), |text| {
-                text.parse::<Step>().map_err(|error| error.to_string())
-            });
+            let typed = self.step_field.show(
+                ui,
+                colours,
+                "length of a step",
+                width,
+                &view.step.to_string(),
+                |text| text.parse::<Step>().map_err(|error| error.to_string()),
+            );
             actions.extend(typed.map(Action::SetStep));
             if word(ui, colours, "back", "back by a step", Standing::Command).clicked() {
                 actions.push(Action::Step(-1));
@@ -476,7 +640,11 @@ impl Window {
             if word(ui, colours, "on", "on by a step", Standing::Command).clicked() {
                 actions.push(Action::Step(1));
             }
-            let (play, name) = if view.playing { ("pause", "pause") } else { ("play", "play") };
+            let (play, name) = if view.playing {
+                ("pause", "pause")
+            } else {
+                ("play", "play")
+            };
             if word(ui, colours, play, name, Standing::Command).clicked() {
                 actions.push(Action::Play(!view.playing));
             }
@@ -490,7 +658,11 @@ impl Window {
             ui.add_space(10.0 * scale);
             caption(ui, "hold");
             for hold in Hold::ALL {
-                let standing = if view.hold == hold { Standing::Chosen } else { Standing::Open };
+                let standing = if view.hold == hold {
+                    Standing::Chosen
+                } else {
+                    Standing::Open
+                };
                 let name = format!("hold {}", hold.phrase());
                 if word(ui, colours, hold.phrase(), &name, standing).clicked() {
                     actions.push(Action::SetHold(hold));
@@ -525,26 +697,38 @@ impl Window {
                 Vec::new()
             }
             panel @ (Panel::Open | Panel::Save) => {
-                let text = || self.state.document.path.as_ref().map_or_else(String::new, |path| path.display().to_string());
+                let text = || {
+                    self.state
+                        .document
+                        .path
+                        .as_ref()
+                        .map_or_else(String::new, |path| path.display().to_string())
+                };
                 if self.path_form.as_ref().is_none_or(|(of, _)| *of != panel) {
                     self.path_form = Some((panel, PathForm::new(text())));
                 }
-                self.path_form
-                    .as_mut()
-                    .map_or_else(Vec::new, |(_, form)| form.show(ui, colours, panel == Panel::Save))
+                self.path_form.as_mut().map_or_else(Vec::new, |(_, form)| {
+                    form.show(ui, colours, panel == Panel::Save)
+                })
             }
             Panel::Season => {
                 let scenario = &self.state.document.scenario;
                 if !self.form.as_ref().is_some_and(|form| form.is_of(scenario)) {
                     self.form = Some(SeasonForm::new(scenario));
                 }
-                let mut actions = self.form.as_mut().map_or_else(Vec::new, |form| form.show(ui, colours));
+                let mut actions = self
+                    .form
+                    .as_mut()
+                    .map_or_else(Vec::new, |form| form.show(ui, colours));
                 ui.horizontal(|ui| {
                     let document = &self.state.document;
-                    for (text, can, action) in
-                        [("undo", document.can_undo(), Action::Undo), ("redo", document.can_redo(), Action::Redo)]
-                    {
-                        let pressed = ui.add_enabled_ui(can, |ui| word(ui, colours, text, text, Standing::Command).clicked());
+                    for (text, can, action) in [
+                        ("undo", document.can_undo(), Action::Undo),
+                        ("redo", document.can_redo(), Action::Redo),
+                    ] {
+                        let pressed = ui.add_enabled_ui(can, |ui| {
+                            word(ui, colours, text, text, Standing::Command).clicked()
+                        });
                         if pressed.inner {
                             actions.push(action);
                         }
@@ -560,10 +744,9 @@ impl Window {
         if !self.state.view.skyline {
             return None;
         }
-        let fits = self
-            .laid
-            .as_ref()
-            .is_some_and(|laid| Arc::ptr_eq(&laid.plan, &made.plan) && Arc::ptr_eq(&laid.strip, made));
+        let fits = self.laid.as_ref().is_some_and(|laid| {
+            Arc::ptr_eq(&laid.plan, &made.plan) && Arc::ptr_eq(&laid.strip, made)
+        });
         if !fits {
             let scenario = &made.plan.scenario;
             let outline = match self.laid.take() {
@@ -578,7 +761,12 @@ impl Window {
             });
         }
         let laid = self.laid.as_ref()?;
-        let moment = self.moment.as_ref().filter(|moment| Arc::ptr_eq(&moment.plan, &made.plan))?.moment.as_ref()?;
+        let moment = self
+            .moment
+            .as_ref()
+            .filter(|moment| Arc::ptr_eq(&moment.plan, &made.plan))?
+            .moment
+            .as_ref()?;
         let style = OverlayStyle {
             width: made.view.width,
             height: made.view.height,
@@ -586,20 +774,42 @@ impl Window {
             sun_distance: made.plan.scenario.sun_distance,
             keep_clear: &laid.boxes,
         };
-        Some(skyline_overlay(&made.plan.season, &made.layout, &laid.outline, moment, &style))
+        Some(skyline_overlay(
+            &made.plan.season,
+            &made.layout,
+            &laid.outline,
+            moment,
+            &style,
+        ))
     }
 
     /// What the strip shows, in a sentence, for those who cannot see it.
     fn strip_summary(&self) -> String {
-        let Some(plan) = &self.state.plan else { return String::from("strip, being worked out") };
-        let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
-        let place = self.moment().and_then(|moment| moment.of(plan.season.subject)).map_or_else(String::new, |subject| {
-            let height = subject.height_over_skyline().degrees();
-            let part = subject.skyline_part.as_deref().unwrap_or("the skyline");
-            let where_it_is = if height < 0.0 { "behind" } else { "above" };
-            format!(" stands in {}, {:.1} degrees {where_it_is} {part}", subject.constellation.name(), height.abs())
-        });
-        format!("strip at {}: {}{place}", clock.long(self.state.view.instant), plan.season.subject)
+        let Some(plan) = &self.state.plan else {
+            return String::from("strip, being worked out");
+        };
+        let clock = LocalClock {
+            scenario: &plan.scenario,
+            sky: &plan.sky,
+        };
+        let place = self
+            .moment()
+            .and_then(|moment| moment.of(plan.season.subject))
+            .map_or_else(String::new, |subject| {
+                let height = subject.height_over_skyline().degrees();
+                let part = subject.skyline_part.as_deref().unwrap_or("the skyline");
+                let where_it_is = if height < 0.0 { "behind" } else { "above" };
+                format!(
+                    " stands in {}, {:.1} degrees {where_it_is} {part}",
+                    subject.constellation.name(),
+                    height.abs()
+                )
+            });
+        format!(
+            "strip at {}: {}{place}",
+            clock.long(self.state.view.instant),
+            plan.season.subject
+        )
     }
 }
 
@@ -607,7 +817,11 @@ impl Window {
 fn universal_words(local: &str, universal: &str) -> String {
     let (date, time) = universal.split_once('T').unwrap_or(("", universal));
     let time = time.replace('Z', " UTC");
-    if local.starts_with(date) { time } else { format!("{date} {time}") }
+    if local.starts_with(date) {
+        time
+    } else {
+        format!("{date} {time}")
+    }
 }
 
 /// Who looks at what in a plan.
@@ -628,7 +842,8 @@ impl eframe::App for Window {
         for done in self.worker.collect() {
             self.take(done);
         }
-        if ctx.input(|input| input.viewport().close_requested()) && self.state.document.is_changed() {
+        if ctx.input(|input| input.viewport().close_requested()) && self.state.document.is_changed()
+        {
             ctx.send_viewport_cmd(egui::ViewportCommand::CancelClose);
             self.state.apply(Action::Close);
         }
@@ -647,38 +862,56 @@ impl eframe::App for Window {
         let scale = self.scale(whole);
         self.dress(&ctx, scale);
         // The window is cleared to the ground: no panel fills it a second time.
-        let edge = |left: f32, right: f32, top: f32, bottom: f32| Frame::NONE.inner_margin(Margin {
-            left: left as i8,
-            right: right as i8,
-            top: top as i8,
-            bottom: bottom as i8,
-        });
+        let edge = |left: f32, right: f32, top: f32, bottom: f32| {
+            Frame::NONE.inner_margin(Margin {
+                left: left as i8,
+                right: right as i8,
+                top: top as i8,
+                bottom: bottom as i8,
+            })
+        };
 
-        Side::top("heading").frame(edge(MARGIN, MARGIN, 8.0, 2.0)).show_separator_line(false).show(ui, |ui| {
-            actions.extend(self.heading(ui, &colours, scale));
-            actions.extend(self.question(ui, &colours));
-        });
-        Side::bottom("time").frame(edge(MARGIN, MARGIN, 2.0, 8.0)).show_separator_line(false).show(ui, |ui| {
-            actions.extend(self.caption_line(ui, &colours));
-            if let Some(plan) = self.state.plan.clone() {
-                let (least, most) = TIMELINE_HEIGHT;
-                let height = (TIMELINE_PART * whole.y).clamp(least * scale, most * scale);
-                let view = self.state.view.clone();
-                actions.extend(timeline_pane::show(ui, &mut self.timeline, &plan, &view, &colours, height, scale));
-            }
-            actions.extend(self.time_line(ui, &colours, scale));
-        });
+        Side::top("heading")
+            .frame(edge(MARGIN, MARGIN, 8.0, 2.0))
+            .show_separator_line(false)
+            .show(ui, |ui| {
+                actions.extend(self.heading(ui, &colours, scale));
+                actions.extend(self.question(ui, &colours));
+            });
+        Side::bottom("time")
+            .frame(edge(MARGIN, MARGIN, 2.0, 8.0))
+            .show_separator_line(false)
+            .show(ui, |ui| {
+                actions.extend(self.caption_line(ui, &colours));
+                if let Some(plan) = self.state.plan.clone() {
+                    let (least, most) = TIMELINE_HEIGHT;
+                    let height = (TIMELINE_PART * whole.y).clamp(least * scale, most * scale);
+                    let view = self.state.view.clone();
+                    actions.extend(timeline_pane::show(
+                        ui,
+                        &mut self.timeline,
+                        &plan,
+                        &view,
+                        &colours,
+                        height,
+                        scale,
+                    ));
+                }
+                actions.extend(self.time_line(ui, &colours, scale));
+            });
         Side::right("readings")
             .exact_size(READINGS_WIDTH * scale)
             .resizable(false)
             .frame(edge(10.0, MARGIN, 4.0, 4.0))
             .show_separator_line(false)
             .show(ui, |ui| {
-                egui::ScrollArea::vertical().auto_shrink(false).show(ui, |ui| {
-                    if let Some(column) = self.readings() {
-                        actions.extend(readings_pane::show(ui, &column, &colours, scale));
-                    }
-                });
+                egui::ScrollArea::vertical()
+                    .auto_shrink(false)
+                    .show(ui, |ui| {
+                        if let Some(column) = self.readings() {
+                            actions.extend(readings_pane::show(ui, &column, &colours, scale));
+                        }
+                    });
             });
         if self.state.view.panel == Panel::None {
             (self.form, self.path_form) = (None, None);
@@ -689,28 +922,34 @@ impl eframe::App for Window {
                 .frame(edge(MARGIN, 10.0, 4.0, 4.0))
                 .show_separator_line(false)
                 .show(ui, |ui| {
-                    egui::ScrollArea::vertical().auto_shrink(false).show(ui, |ui| {
-                        actions.extend(self.aside(ui, &colours));
-                    });
+                    egui::ScrollArea::vertical()
+                        .auto_shrink(false)
+                        .show(ui, |ui| {
+                            actions.extend(self.aside(ui, &colours));
+                        });
                 });
         }
-        egui::CentralPanel::default().frame(edge(4.0, 0.0, 0.0, 0.0)).show(ui, |ui| match self.state.plan.clone() {
-            Some(plan) => {
-                let mut strip = std::mem::take(&mut self.strip);
-                strip.summary = self.strip_summary();
-                let view = self.state.view.clone();
-                let overlay = |made: &Arc<StripMade>| self.overlay(made);
-                actions.extend(strip_pane::show(ui, &mut strip, &plan, &view, &colours, scale, overlay));
-                self.strip = strip;
-            }
-            None => {
-                let words = match &self.state.notice {
-                    Some(notice) => notice.text.as_str(),
-                    None => "Planning the season \u{2026}",
-                };
-                ui.centered_and_justified(|ui| ui.label(words));
-            }
-        });
+        egui::CentralPanel::default()
+            .frame(edge(4.0, 0.0, 0.0, 0.0))
+            .show(ui, |ui| match self.state.plan.clone() {
+                Some(plan) => {
+                    let mut strip = std::mem::take(&mut self.strip);
+                    strip.summary = self.strip_summary();
+                    let view = self.state.view.clone();
+                    let overlay = |made: &Arc<StripMade>| self.overlay(made);
+                    actions.extend(strip_pane::show(
+                        ui, &mut strip, &plan, &view, &colours, scale, overlay,
+                    ));
+                    self.strip = strip;
+                }
+                None => {
+                    let words = match &self.state.notice {
+                        Some(notice) => notice.text.as_str(),
+                        None => "Planning the season \u{2026}",
+                    };
+                    ui.centered_and_justified(|ui| ui.label(words));
+                }
+            });
         let is_idle = actions.is_empty();
         for action in actions {
             self.apply(&ctx, action);

@@ -78,7 +78,12 @@ impl Field {
 fn select_all(ui: &Ui, response: &egui::Response, text: &str) {
     let mut state = egui::text_edit::TextEditState::load(ui.ctx(), response.id).unwrap_or_default();
     let end = egui::text::CCursor::new(text.chars().count());
-    state.cursor.set_char_range(Some(egui::text::CCursorRange::two(egui::text::CCursor::new(0), end)));
+    state
+        .cursor
+        .set_char_range(Some(egui::text::CCursorRange::two(
+            egui::text::CCursor::new(0),
+            end,
+        )));
     state.store(ui.ctx(), response.id);
 }
 
@@ -97,12 +102,19 @@ pub struct PathForm {
 impl PathForm {
     #[must_use]
     pub fn new(text: String) -> Self {
-        PathForm { text, wants_focus: true }
+        PathForm {
+            text,
+            wants_focus: true,
+        }
     }
 
     pub fn show(&mut self, ui: &mut Ui, palette: &Palette, saving: bool) -> Vec<Action> {
         let mut actions = Vec::new();
-        let (heading, verb) = if saving { ("Save the season as", "save") } else { ("Open a season", "open") };
+        let (heading, verb) = if saving {
+            ("Save the season as", "save")
+        } else {
+            ("Open a season", "open")
+        };
         ui.heading(heading);
         let label = caption(ui, "file");
         let edit = egui::TextEdit::singleline(&mut self.text).desired_width(f32::INFINITY);
@@ -115,7 +127,11 @@ impl PathForm {
             let pressed = word(ui, palette, verb, verb, Standing::Command).clicked();
             if (pressed || entered) && !self.text.trim().is_empty() {
                 let path = PathBuf::from(self.text.trim());
-                actions.push(if saving { Action::Save(path) } else { Action::Open(path) });
+                actions.push(if saving {
+                    Action::Save(path)
+                } else {
+                    Action::Open(path)
+                });
             }
             if word(ui, palette, "close", "close this", Standing::Open).clicked() {
                 actions.push(Action::ShowPanel(Panel::None));
@@ -167,7 +183,14 @@ fn figure(value: f64) -> String {
     text.to_owned()
 }
 
-fn number(mistakes: &mut Mistakes, entry: Entry, text: &str, least: f64, most: f64, unit: &str) -> f64 {
+fn number(
+    mistakes: &mut Mistakes,
+    entry: Entry,
+    text: &str,
+    least: f64,
+    most: f64,
+    unit: &str,
+) -> f64 {
     let plain = text.trim().replace('\u{2212}', "-");
     match plain.parse::<f64>() {
         Ok(value) if (least..=most).contains(&value) => value,
@@ -182,7 +205,10 @@ impl SeasonForm {
     #[must_use]
     pub fn new(scenario: &Arc<Scenario>) -> Self {
         let date = |date: fn(&SeasonDates) -> CivilDate| {
-            scenario.season.as_ref().map_or_else(String::new, |season| date(season).to_string())
+            scenario
+                .season
+                .as_ref()
+                .map_or_else(String::new, |season| date(season).to_string())
         };
         SeasonForm {
             subject: scenario.subject,
@@ -210,7 +236,12 @@ impl SeasonForm {
         let mut mistakes = Mistakes::new();
         let mut scenario = Scenario::clone(&self.of);
         scenario.subject = self.subject;
-        scenario.companions = self.companions.iter().copied().filter(|body| *body != self.subject).collect();
+        scenario.companions = self
+            .companions
+            .iter()
+            .copied()
+            .filter(|body| *body != self.subject)
+            .collect();
         scenario.title = self.title.trim().to_owned();
         if scenario.title.is_empty() {
             mistakes.push((Entry::Title, String::from("a line of words")));
@@ -220,12 +251,30 @@ impl SeasonForm {
         if scenario.site.name.is_empty() {
             mistakes.push((Entry::Site, String::from("the name of the place")));
         }
-        let latitude =
-            number(&mut mistakes, Entry::Latitude, &self.latitude, -90.0, 90.0, "degrees, north positive");
-        let longitude =
-            number(&mut mistakes, Entry::Longitude, &self.longitude, -180.0, 180.0, "degrees, east positive");
-        let elevation =
-            number(&mut mistakes, Entry::Elevation, &self.elevation, -500.0, 9000.0, "metres above the sea");
+        let latitude = number(
+            &mut mistakes,
+            Entry::Latitude,
+            &self.latitude,
+            -90.0,
+            90.0,
+            "degrees, north positive",
+        );
+        let longitude = number(
+            &mut mistakes,
+            Entry::Longitude,
+            &self.longitude,
+            -180.0,
+            180.0,
+            "degrees, east positive",
+        );
+        let elevation = number(
+            &mut mistakes,
+            Entry::Elevation,
+            &self.elevation,
+            -500.0,
+            9000.0,
+            "metres above the sea",
+        );
         // A value that was not touched keeps all its digits.
         if self.latitude != figure(self.of.site.latitude.degrees()) {
             scenario.site.latitude = Angle::from_degrees(latitude);
@@ -246,7 +295,11 @@ impl SeasonForm {
         {
             mistakes.push((Entry::Title, error.to_string()));
         }
-        if mistakes.is_empty() { Ok(scenario) } else { Err(mistakes) }
+        if mistakes.is_empty() {
+            Ok(scenario)
+        } else {
+            Err(mistakes)
+        }
     }
 
     fn dates(&self, mistakes: &mut Mistakes) -> Option<SeasonDates> {
@@ -257,7 +310,10 @@ impl SeasonForm {
         let mut read = |entry: Entry, text: &str| match text.parse::<CivilDate>() {
             Ok(date) => Some(date),
             Err(error) => {
-                mistakes.push((entry, format!("{error}; or leave both empty for the next season")));
+                mistakes.push((
+                    entry,
+                    format!("{error}; or leave both empty for the next season"),
+                ));
                 None
             }
         };
@@ -277,7 +333,11 @@ impl SeasonForm {
         caption(ui, "subject");
         ui.horizontal_wrapped(|ui| {
             for body in Body::PLANETS {
-                let standing = if self.subject == body { Standing::Chosen } else { Standing::Open };
+                let standing = if self.subject == body {
+                    Standing::Chosen
+                } else {
+                    Standing::Open
+                };
                 let name = format!("{body} as the subject");
                 if word(ui, palette, body.name(), &name, standing).clicked() {
                     self.subject = body;
@@ -286,9 +346,20 @@ impl SeasonForm {
         });
         caption(ui, "drawn with it");
         ui.horizontal_wrapped(|ui| {
-            for body in Body::PLANETS.into_iter().chain([Body::Moon]).filter(|body| *body != self.subject) {
-                let place = self.companions.iter().position(|companion| *companion == body);
-                let standing = if place.is_some() { Standing::Chosen } else { Standing::Open };
+            for body in Body::PLANETS
+                .into_iter()
+                .chain([Body::Moon])
+                .filter(|body| *body != self.subject)
+            {
+                let place = self
+                    .companions
+                    .iter()
+                    .position(|companion| *companion == body);
+                let standing = if place.is_some() {
+                    Standing::Chosen
+                } else {
+                    Standing::Open
+                };
                 let name = format!("{body} drawn with it");
                 if word(ui, palette, body.name(), &name, standing).clicked() {
                     match place {
@@ -320,11 +391,29 @@ impl SeasonForm {
         });
         entry(ui, Entry::Site, "place", &mut self.site, wide);
         ui.horizontal_top(|ui| {
-            entry(ui, Entry::Latitude, "latitude, \u{b0} north", &mut self.latitude, half);
-            entry(ui, Entry::Longitude, "longitude, \u{b0} east", &mut self.longitude, half);
+            entry(
+                ui,
+                Entry::Latitude,
+                "latitude, \u{b0} north",
+                &mut self.latitude,
+                half,
+            );
+            entry(
+                ui,
+                Entry::Longitude,
+                "longitude, \u{b0} east",
+                &mut self.longitude,
+                half,
+            );
         });
         ui.horizontal_top(|ui| {
-            entry(ui, Entry::Elevation, "elevation, m", &mut self.elevation, half);
+            entry(
+                ui,
+                Entry::Elevation,
+                "elevation, m",
+                &mut self.elevation,
+                half,
+            );
             entry(ui, Entry::Zone, "clock", &mut self.zone, half);
         });
         ui.add_space(6.0);
@@ -332,7 +421,14 @@ impl SeasonForm {
             let made = self.scenario().ok().filter(|made| *made != *self.of);
             let pressed = ui
                 .add_enabled_ui(made.is_some(), |ui| {
-                    word(ui, palette, "plan this season", "plan this season", Standing::Command).clicked()
+                    word(
+                        ui,
+                        palette,
+                        "plan this season",
+                        "plan this season",
+                        Standing::Command,
+                    )
+                    .clicked()
                 })
                 .inner;
             if let Some(made) = made.filter(|_| pressed || entered) {

@@ -26,7 +26,10 @@ pub(super) fn first_look(plan: &Plan) -> Tt {
         _ => false,
     });
     let beside = if inner { -BESIDE_DAYS } else { BESIDE_DAYS };
-    let day = event.map_or_else(|| season.span.middle(), |event| event.instant.plus_days(beside));
+    let day = event.map_or_else(
+        || season.span.middle(),
+        |event| event.instant.plus_days(beside),
+    );
     let night = night_at(&plan.sky, &plan.scenario.site, day);
     let best = samples(night)
         .filter(|instant| season.span.contains(*instant))

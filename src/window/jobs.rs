@@ -20,7 +20,13 @@ pub enum Kind {
 
 impl Kind {
     const COUNT: usize = 5;
-    pub const ALL: [Kind; Kind::COUNT] = [Kind::Plan, Kind::Tonight, Kind::Strip, Kind::Nights, Kind::Timeline];
+    pub const ALL: [Kind; Kind::COUNT] = [
+        Kind::Plan,
+        Kind::Tonight,
+        Kind::Strip,
+        Kind::Nights,
+        Kind::Timeline,
+    ];
 }
 
 type Job<T> = Box<dyn FnOnce() -> T + Send>;
@@ -59,7 +65,10 @@ impl<T: Send + 'static> Worker<T> {
     /// The system gives no thread.
     pub fn new(wake: impl Fn() + Send + 'static) -> std::io::Result<Self> {
         let shared = Arc::new(Shared {
-            desk: Mutex::new(Desk { waiting: [const { None }; Kind::COUNT], closed: false }),
+            desk: Mutex::new(Desk {
+                waiting: [const { None }; Kind::COUNT],
+                closed: false,
+            }),
             bell: Condvar::new(),
         });
         let (send, done) = channel();
@@ -80,9 +89,11 @@ impl<T: Send + 'static> Worker<T> {
     pub fn ask(&mut self, kind: Kind, job: impl FnOnce() -> T + Send + 'static) {
         let index = kind as usize;
         let mut desk = self.shared.desk();
-        if let (Some(slot), Some(asked), Some(answered)) =
-            (desk.waiting.get_mut(index), self.asked.get_mut(index), self.answered.get_mut(index))
-        {
+        if let (Some(slot), Some(asked), Some(answered)) = (
+            desk.waiting.get_mut(index),
+            self.asked.get_mut(index),
+            self.answered.get_mut(index),
+        ) {
             if slot.replace(Box::new(job)).is_some() {
                 *answered += 1;
             }
@@ -151,7 +162,12 @@ fn work<T>(shared: &Shared<T>, done: &Sender<(Kind, T)>, wake: impl Fn()) {
                 .find_map(|kind| Some((kind, desk.waiting.get_mut(kind as usize)?.take()?)));
             match next {
                 Some(next) => break next,
-                None => desk = shared.bell.wait(desk).unwrap_or_else(PoisonError::into_inner),
+                None => {
+                    desk = shared
+                        .bell
+                        .wait(desk)
+                        .unwrap_or_else(PoisonError::into_inner)
+                }
             }
         };
         drop(desk);

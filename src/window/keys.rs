@@ -54,52 +54,135 @@ pub struct Binding {
 }
 
 const fn plain(key: Key, shown: &'static str, words: &'static str, command: Command) -> Binding {
-    Binding { key, modifiers: Modifiers::NONE, shown, words, command }
+    Binding {
+        key,
+        modifiers: Modifiers::NONE,
+        shown,
+        words,
+        command,
+    }
 }
 
 const fn shift(key: Key, shown: &'static str, words: &'static str, command: Command) -> Binding {
-    Binding { key, modifiers: Modifiers::SHIFT, shown, words, command }
+    Binding {
+        key,
+        modifiers: Modifiers::SHIFT,
+        shown,
+        words,
+        command,
+    }
 }
 
 const fn ctrl(key: Key, shown: &'static str, words: &'static str, command: Command) -> Binding {
-    Binding { key, modifiers: Modifiers::COMMAND, shown, words, command }
+    Binding {
+        key,
+        modifiers: Modifiers::COMMAND,
+        shown,
+        words,
+        command,
+    }
 }
 
-const CTRL_SHIFT: Modifiers = Modifiers { shift: true, ..Modifiers::COMMAND };
+const CTRL_SHIFT: Modifiers = Modifiers {
+    shift: true,
+    ..Modifiers::COMMAND
+};
 
 /// Every key of the window. Those with more modifiers stand before those with fewer.
 pub const BINDINGS: [Binding; 31] = [
-    Binding { key: Key::S, modifiers: CTRL_SHIFT, shown: "Ctrl Shift S", words: "save under another name", command: Command::SaveAs },
-    Binding { key: Key::Z, modifiers: CTRL_SHIFT, shown: "Ctrl Shift Z", words: "redo", command: Command::Redo },
-    ctrl(Key::Z, "Ctrl Z", "undo a change of the season", Command::Undo),
+    Binding {
+        key: Key::S,
+        modifiers: CTRL_SHIFT,
+        shown: "Ctrl Shift S",
+        words: "save under another name",
+        command: Command::SaveAs,
+    },
+    Binding {
+        key: Key::Z,
+        modifiers: CTRL_SHIFT,
+        shown: "Ctrl Shift Z",
+        words: "redo",
+        command: Command::Redo,
+    },
+    ctrl(
+        Key::Z,
+        "Ctrl Z",
+        "undo a change of the season",
+        Command::Undo,
+    ),
     ctrl(Key::O, "Ctrl O", "open a file", Command::Open),
     ctrl(Key::S, "Ctrl S", "save", Command::Save),
     ctrl(Key::Plus, "Ctrl +", "larger text", Command::LargerText),
-    ctrl(Key::Minus, "Ctrl \u{2212}", "smaller text", Command::SmallerText),
-    shift(Key::ArrowRight, "Shift \u{2192}", "ten steps on", Command::TenOn),
-    shift(Key::ArrowLeft, "Shift \u{2190}", "ten steps back", Command::TenBack),
+    ctrl(
+        Key::Minus,
+        "Ctrl \u{2212}",
+        "smaller text",
+        Command::SmallerText,
+    ),
+    shift(
+        Key::ArrowRight,
+        "Shift \u{2192}",
+        "ten steps on",
+        Command::TenOn,
+    ),
+    shift(
+        Key::ArrowLeft,
+        "Shift \u{2190}",
+        "ten steps back",
+        Command::TenBack,
+    ),
     plain(Key::ArrowRight, "\u{2192}", "a step on", Command::StepOn),
     plain(Key::ArrowLeft, "\u{2190}", "a step back", Command::StepBack),
     plain(Key::PageDown, "Page down", "next event", Command::NextEvent),
-    plain(Key::PageUp, "Page up", "event before", Command::PreviousEvent),
-    plain(Key::Home, "Home", "beginning of the season", Command::SeasonStart),
+    plain(
+        Key::PageUp,
+        "Page up",
+        "event before",
+        Command::PreviousEvent,
+    ),
+    plain(
+        Key::Home,
+        "Home",
+        "beginning of the season",
+        Command::SeasonStart,
+    ),
     plain(Key::End, "End", "end of the season", Command::SeasonEnd),
     plain(Key::P, "P", "play or pause", Command::Play),
     plain(Key::Period, ".", "play faster", Command::Faster),
     plain(Key::Comma, ",", "play slower", Command::Slower),
-    plain(Key::H, "H", "hold the next: clock, Sun, stars", Command::NextHold),
+    plain(
+        Key::H,
+        "H",
+        "hold the next: clock, Sun, stars",
+        Command::NextHold,
+    ),
     plain(Key::D, "D", "type a date", Command::TypeDate),
-    plain(Key::L, "L", "the loop, as large as it fits", Command::FitLoop),
+    plain(
+        Key::L,
+        "L",
+        "the loop, as large as it fits",
+        Command::FitLoop,
+    ),
     plain(Key::W, "W", "the whole season", Command::FitSeason),
     plain(Key::ArrowUp, "\u{2191}", "nearer", Command::Nearer),
     plain(Key::ArrowDown, "\u{2193}", "farther", Command::Farther),
     plain(Key::U, "U", "turn the strip round", Command::TurnRound),
     plain(Key::K, "K", "skyline on or off", Command::Skyline),
-    plain(Key::T, "T", "next theme: light, dark, red", Command::NextTheme),
+    plain(
+        Key::T,
+        "T",
+        "next theme: light, dark, red",
+        Command::NextTheme,
+    ),
     plain(Key::E, "E", "edit the season", Command::EditSeason),
     plain(Key::C, "C", "copy the readings", Command::Copy),
     plain(Key::F1, "F1", "these keys", Command::Help),
-    plain(Key::Escape, "Esc", "close what is open, pause", Command::Put),
+    plain(
+        Key::Escape,
+        "Esc",
+        "close what is open, pause",
+        Command::Put,
+    ),
 ];
 
 /// What was pressed. While a text is typed only keys with Ctrl count.
@@ -112,7 +195,8 @@ pub fn pressed(ctx: &Context) -> Vec<Command> {
             continue;
         }
         // A slow frame may hold several presses of a key.
-        let count = ctx.input_mut(|input| input.count_and_consume_key(binding.modifiers, binding.key));
+        let count =
+            ctx.input_mut(|input| input.count_and_consume_key(binding.modifiers, binding.key));
         commands.extend(std::iter::repeat_n(binding.command, count));
     }
     commands
@@ -120,8 +204,19 @@ pub fn pressed(ctx: &Context) -> Vec<Command> {
 
 /// The action behind a command; `None` where there is nothing to do now, or where it concerns fields alone.
 #[must_use]
-pub fn action(command: Command, view: &View, plan: Option<&Plan>, strip: &StripPane) -> Option<Action> {
-    let toggle = |panel: Panel| Action::ShowPanel(if view.panel == panel { Panel::None } else { panel });
+pub fn action(
+    command: Command,
+    view: &View,
+    plan: Option<&Plan>,
+    strip: &StripPane,
+) -> Option<Action> {
+    let toggle = |panel: Panel| {
+        Action::ShowPanel(if view.panel == panel {
+            Panel::None
+        } else {
+            panel
+        })
+    };
     Some(match command {
         Command::StepOn => Action::Step(1),
         Command::StepBack => Action::Step(-1),

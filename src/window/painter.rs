@@ -12,7 +12,8 @@ use egui::{Color32, FontId, Mesh, Pos2, Shape as EguiShape, TextFormat};
 use super::polygon::{convex, quadrangles, trapezoids, triangles_within};
 use super::theme::{colour, family};
 use crate::chart::{
-    Align, Label, Layer, Level, Mark, Paint, Palette, Point, Rect, RibbonPoint, Role, Run, Scene, Shape, Stop, Stroke,
+    Align, Label, Layer, Level, Mark, Paint, Palette, Point, Rect, RibbonPoint, Role, Run, Scene,
+    Shape, Stop, Stroke,
 };
 
 /// Where a sheet stands on screen: its upper left corner and the size of its points.
@@ -34,7 +35,10 @@ impl Placement {
     /// The same without rounding.
     #[must_use]
     pub fn at_f64(&self, point: Point) -> (f64, f64) {
-        (self.left + point.x * self.scale, self.top + point.y * self.scale)
+        (
+            self.left + point.x * self.scale,
+            self.top + point.y * self.scale,
+        )
     }
 
     /// The point of the sheet under a place on screen.
@@ -96,7 +100,11 @@ pub struct Shift {
 }
 
 impl Shift {
-    pub const NONE: Shift = Shift { scale: 1.0, dx: 0.0, dy: 0.0 };
+    pub const NONE: Shift = Shift {
+        scale: 1.0,
+        dx: 0.0,
+        dy: 0.0,
+    };
 
     fn pos(self, pos: Pos2) -> Pos2 {
         Pos2::new(
@@ -111,13 +119,20 @@ impl Picture {
     /// its layers, which holds within a level.
     #[must_use]
     pub fn new(scene: &Scene, easel: Easel, level_of: impl Fn(&Mark) -> Level) -> Self {
-        let mut marks: Vec<(Level, &Mark)> = scene.marks.iter().map(|mark| (level_of(mark), mark)).collect();
+        let mut marks: Vec<(Level, &Mark)> = scene
+            .marks
+            .iter()
+            .map(|mark| (level_of(mark), mark))
+            .collect();
         marks.sort_by_key(|(level, _)| *level);
         let mut pieces: Vec<Piece> = Vec::new();
         let mut brush = Brush::new(&easel);
         let mut place = (Level::Paper, true);
         for (level, mark) in marks {
-            let next = (level, matches!(mark.layer, Layer::Sheet | Layer::Plate | Layer::Frame));
+            let next = (
+                level,
+                matches!(mark.layer, Layer::Sheet | Layer::Plate | Layer::Frame),
+            );
             // One mesh for all that belongs together.
             if next != place || matches!(mark.shape, Shape::Label(_)) {
                 brush.give(place, &mut pieces);
@@ -125,9 +140,14 @@ impl Picture {
             place = next;
             match &mark.shape {
                 // The window is the sheet.
-                Shape::Area { fill, .. } if mark.layer == Layer::Sheet && fill.role == Role::Ground => {}
+                Shape::Area { fill, .. }
+                    if mark.layer == Layer::Sheet && fill.role == Role::Ground => {}
                 Shape::Label(label) => {
-                    pieces.push(Piece { level, is_still: next.1, what: What::Text(label.clone()) });
+                    pieces.push(Piece {
+                        level,
+                        is_still: next.1,
+                        what: What::Text(label.clone()),
+                    });
                 }
                 shape => brush.draw(shape),
             }
@@ -156,7 +176,13 @@ impl Picture {
 
     /// Shows the picture with another laid over it, level by level. A shift moves what lies within the `frames`; sheet
     /// and edges stay.
-    pub fn show(&self, painter: &egui::Painter, shift: Shift, frames: &[egui::Rect], over: Option<&Picture>) {
+    pub fn show(
+        &self,
+        painter: &egui::Painter,
+        shift: Shift,
+        frames: &[egui::Rect],
+        over: Option<&Picture>,
+    ) {
         let painter = painter.with_clip_rect(self.easel.clip.intersect(painter.clip_rect()));
         let mut waiting = over.map(|over| over.pieces.iter().peekable());
         for piece in &self.pieces {
@@ -201,8 +227,16 @@ impl Piece {
 }
 
 /// Directions in which a halo is laid around letters.
-const HALO: [(f32, f32); 8] =
-    [(1.0, 0.0), (0.7, 0.7), (0.0, 1.0), (-0.7, 0.7), (-1.0, 0.0), (-0.7, -0.7), (0.0, -1.0), (0.7, -0.7)];
+const HALO: [(f32, f32); 8] = [
+    (1.0, 0.0),
+    (0.7, 0.7),
+    (0.0, 1.0),
+    (-0.7, 0.7),
+    (-1.0, 0.0),
+    (-0.7, -0.7),
+    (0.0, -1.0),
+    (0.7, -0.7),
+];
 
 fn write(painter: &egui::Painter, label: &Label, easel: &Easel, shift: Shift) {
     let scale = easel.placement.scale;
@@ -229,7 +263,10 @@ fn write(painter: &egui::Painter, label: &Label, easel: &Easel, shift: Shift) {
     let turn = egui::emath::Rot2::from_angle(label.rotation_degrees.to_radians() as f32);
     let corner = anchor + turn * egui::vec2(-back, -baseline);
     let angle = label.rotation_degrees.to_radians() as f32;
-    if !painter.clip_rect().expand(4.0).intersects(egui::Rect::from_min_size(corner, galley.size()))
+    if !painter
+        .clip_rect()
+        .expand(4.0)
+        .intersects(egui::Rect::from_min_size(corner, galley.size()))
         && label.rotation_degrees == 0.0
     {
         return;
@@ -239,7 +276,9 @@ fn write(painter: &egui::Painter, label: &Label, easel: &Easel, shift: Shift) {
         let reach = (label.halo * scale) as f32;
         for (x, y) in HALO {
             let at = corner + egui::vec2(x, y) * reach;
-            painter.add(egui::epaint::TextShape::new(at, Arc::clone(&galley), ground).with_angle(angle));
+            painter.add(
+                egui::epaint::TextShape::new(at, Arc::clone(&galley), ground).with_angle(angle),
+            );
         }
     }
     painter.add(egui::epaint::TextShape::new(corner, galley, ink).with_angle(angle));
@@ -265,7 +304,10 @@ struct Brush<'e> {
 
 impl<'e> Brush<'e> {
     fn new(easel: &'e Easel) -> Self {
-        let options = TessellationOptions { coarse_tessellation_culling: false, ..TessellationOptions::default() };
+        let options = TessellationOptions {
+            coarse_tessellation_culling: false,
+            ..TessellationOptions::default()
+        };
         Brush {
             easel,
             // No text passes through it, so that the size of the font's texture does not matter.
@@ -278,7 +320,11 @@ impl<'e> Brush<'e> {
     fn give(&mut self, (level, is_still): (Level, bool), pieces: &mut Vec<Piece>) {
         if !self.mesh.is_empty() {
             let mesh = std::mem::take(&mut self.mesh);
-            pieces.push(Piece { level, is_still, what: What::Mesh(Arc::new(mesh)) });
+            pieces.push(Piece {
+                level,
+                is_still,
+                what: What::Mesh(Arc::new(mesh)),
+            });
         }
     }
 
@@ -314,12 +360,20 @@ impl<'e> Brush<'e> {
                     self.area(rings, fill, edge.as_ref());
                 }
             }
-            Shape::Disc { centre, radius, fill } => {
+            Shape::Disc {
+                centre,
+                radius,
+                fill,
+            } => {
                 if self.is_seen([centre], radius * scale + 1.0) {
                     self.disc(*centre, *radius, self.colour(fill));
                 }
             }
-            Shape::Ring { centre, radius, stroke } => {
+            Shape::Ring {
+                centre,
+                radius,
+                stroke,
+            } => {
                 if self.is_seen([centre], (radius + stroke.width) * scale + 1.0) {
                     let circle = egui::epaint::CircleShape::stroke(
                         self.easel.placement.at(*centre),
@@ -329,7 +383,11 @@ impl<'e> Brush<'e> {
                     self.tessellator.tessellate_circle(circle, &mut self.mesh);
                 }
             }
-            Shape::Shade { polygon, run, stops } => {
+            Shape::Shade {
+                polygon,
+                run,
+                stops,
+            } => {
                 if self.is_seen(polygon, 1.0) {
                     self.shade(polygon, *run, stops);
                 }
@@ -361,7 +419,9 @@ impl<'e> Brush<'e> {
         let pen = self.egui_stroke(stroke);
         let scale = self.easel.placement.scale;
         let shapes = match stroke.dash {
-            Some((on, off)) => EguiShape::dashed_line(&kept, pen, (on * scale) as f32, (off * scale) as f32),
+            Some((on, off)) => {
+                EguiShape::dashed_line(&kept, pen, (on * scale) as f32, (off * scale) as f32)
+            }
             None if closed => vec![EguiShape::closed_line(kept, pen)],
             None => vec![EguiShape::line(kept, pen)],
         };
@@ -372,7 +432,8 @@ impl<'e> Brush<'e> {
 
     fn vertex(&mut self, x: f64, y: f64, colour: Color32) -> u32 {
         let index = self.mesh.vertices.len() as u32;
-        self.mesh.colored_vertex(Pos2::new(x as f32, y as f32), colour);
+        self.mesh
+            .colored_vertex(Pos2::new(x as f32, y as f32), colour);
         index
     }
 
@@ -382,8 +443,10 @@ impl<'e> Brush<'e> {
         let mut across: Option<[u32; 4]> = None;
         let last = points.len().saturating_sub(1);
         for (index, point) in points.iter().enumerate() {
-            let (Some(before), Some(after)) = (points.get(index.saturating_sub(1)), points.get((index + 1).min(last)))
-            else {
+            let (Some(before), Some(after)) = (
+                points.get(index.saturating_sub(1)),
+                points.get((index + 1).min(last)),
+            ) else {
                 continue;
             };
             if !point.at.is_finite() {
@@ -423,7 +486,11 @@ impl<'e> Brush<'e> {
         let radius = radius * self.easel.placement.scale;
         let small = radius < 1.1 * self.feather;
         // The volume of a cone is a third of its cylinder's.
-        let outer = if small { radius * 1.732 } else { radius + self.feather / 2.0 };
+        let outer = if small {
+            radius * 1.732
+        } else {
+            radius + self.feather / 2.0
+        };
         let outer = outer.max(self.feather);
         let inner = (radius - self.feather / 2.0).max(0.0);
         let ink = if small {
@@ -432,7 +499,11 @@ impl<'e> Brush<'e> {
         } else {
             ink
         };
-        let corners = if small { 7 } else { (6.0 + 2.6 * radius).clamp(9.0, 48.0) as u32 };
+        let corners = if small {
+            7
+        } else {
+            (6.0 + 2.6 * radius).clamp(9.0, 48.0) as u32
+        };
         let middle = self.vertex(x, y, ink);
         let first = self.mesh.vertices.len() as u32;
         let rings: u32 = if small { 1 } else { 2 };
@@ -445,7 +516,10 @@ impl<'e> Brush<'e> {
             self.vertex(x + outer * cos, y + outer * sin, Color32::TRANSPARENT);
         }
         for corner in 0..corners {
-            let (here, next) = (first + corner * rings, first + (corner + 1) % corners * rings);
+            let (here, next) = (
+                first + corner * rings,
+                first + (corner + 1) % corners * rings,
+            );
             self.mesh.add_triangle(middle, here, next);
             if !small {
                 self.mesh.add_triangle(here, here + 1, next);
@@ -473,7 +547,11 @@ impl<'e> Brush<'e> {
                 }
                 // A fine line along the rim takes the steps out of it.
                 if edge.is_none() && ink.a() == 255 {
-                    let rim = Stroke { paint: *fill, width: self.feather / placement.scale, dash: None };
+                    let rim = Stroke {
+                        paint: *fill,
+                        width: self.feather / placement.scale,
+                        dash: None,
+                    };
                     for ring in rings {
                         self.line(ring, &rim, true);
                     }
@@ -511,7 +589,10 @@ impl<'e> Brush<'e> {
         // Axes in which the gradient runs down.
         let turned = |point: &Point| {
             let from = point.minus(from);
-            Point::new(from.x * across.x + from.y * across.y, from.x * along.x + from.y * along.y)
+            Point::new(
+                from.x * across.x + from.y * across.y,
+                from.x * along.x + from.y * along.y,
+            )
         };
         let back = |point: Point| from.towards(across, point.x).towards(along, point.y);
         let ring: Vec<Point> = polygon.iter().map(turned).collect();
@@ -519,7 +600,9 @@ impl<'e> Brush<'e> {
         for pair in stops.windows(2) {
             let &[a, b] = pair else { continue };
             for piece in 0..=PIECES {
-                cuts.push(length * (a.part + (b.part - a.part) * f64::from(piece) / f64::from(PIECES)));
+                cuts.push(
+                    length * (a.part + (b.part - a.part) * f64::from(piece) / f64::from(PIECES)),
+                );
             }
         }
         let placement = self.easel.placement;
@@ -541,16 +624,21 @@ impl<'e> Brush<'e> {
             return;
         }
         // Beyond the last stop its paint goes on to the polygon's farthest corner.
-        let farthest = polygon.iter().fold(radius, |most, corner| most.max(corner.distance(centre)));
+        let farthest = polygon
+            .iter()
+            .fold(radius, |most, corner| most.max(corner.distance(centre)));
         let goes_on = stops.last().is_some_and(|stop| stop.paint.opacity > 0.0);
-        let mut parts: Vec<f64> = (0..=RINGS).map(|ring| f64::from(ring) / f64::from(RINGS)).collect();
+        let mut parts: Vec<f64> = (0..=RINGS)
+            .map(|ring| f64::from(ring) / f64::from(RINGS))
+            .collect();
         if goes_on {
             parts.push(1.05 * farthest / radius);
         }
         let cells = trapezoids(&[polygon.to_vec()], &[]);
         let placement = self.easel.placement;
         let at = |part: f64, sector: u32| {
-            let (sin, cos) = libm::sincos(std::f64::consts::TAU * f64::from(sector) / f64::from(SECTORS));
+            let (sin, cos) =
+                libm::sincos(std::f64::consts::TAU * f64::from(sector) / f64::from(SECTORS));
             centre.moved(part * radius * cos, part * radius * sin)
         };
         for pair in parts.windows(2) {
@@ -559,7 +647,10 @@ impl<'e> Brush<'e> {
                 let (a, b) = (at(inner, sector), at(outer, sector));
                 let (c, d) = (at(outer, sector + 1), at(inner, sector + 1));
                 for triangle in [[a, b, c], [a, c, d]] {
-                    for piece in cells.iter().flat_map(|cell| triangles_within(triangle, cell)) {
+                    for piece in cells
+                        .iter()
+                        .flat_map(|cell| triangles_within(triangle, cell))
+                    {
                         let corners = piece.map(|corner| {
                             let (x, y) = placement.at_f64(corner);
                             let ink = self.shade_colour(stops, corner.distance(centre) / radius);
@@ -574,7 +665,9 @@ impl<'e> Brush<'e> {
 
     fn shade_colour(&self, stops: &[Stop], part: f64) -> Color32 {
         let after = stops.iter().position(|stop| stop.part >= part);
-        let paint = |stop: Option<&Stop>| stop.map_or(Color32::TRANSPARENT, |stop| self.colour(&stop.paint));
+        let paint = |stop: Option<&Stop>| {
+            stop.map_or(Color32::TRANSPARENT, |stop| self.colour(&stop.paint))
+        };
         match after {
             None => paint(stops.last()),
             Some(0) => paint(stops.first()),
@@ -582,7 +675,8 @@ impl<'e> Brush<'e> {
                 (Some(a), Some(b)) => {
                     let width = (b.part - a.part).max(1e-9);
                     let t = ((part - a.part) / width) as f32;
-                    self.colour(&a.paint).lerp_to_gamma(self.colour(&b.paint), t)
+                    self.colour(&a.paint)
+                        .lerp_to_gamma(self.colour(&b.paint), t)
                 }
                 (one, _) => paint(one),
             },

@@ -33,7 +33,10 @@ pub(super) fn trapezoids(rings: &[Vec<Point>], cuts: &[f64]) -> Vec<[Point; 4]> 
         }
     }
     edges.sort_by(|a, b| a.top.y.total_cmp(&b.top.y));
-    let mut heights: Vec<f64> = edges.iter().flat_map(|edge| [edge.top.y, edge.bottom.y]).collect();
+    let mut heights: Vec<f64> = edges
+        .iter()
+        .flat_map(|edge| [edge.top.y, edge.bottom.y])
+        .collect();
     heights.extend(cuts.iter().filter(|cut| cut.is_finite()));
     heights.sort_by(f64::total_cmp);
     heights.dedup();
@@ -55,12 +58,20 @@ pub(super) fn trapezoids(rings: &[Vec<Point>], cuts: &[f64]) -> Vec<[Point; 4]> 
         for sides in active.chunks_exact(2) {
             let &[left, right] = sides else { continue };
             // Between the same two edges a piece goes on, whatever happens elsewhere at this height.
-            let before = open.iter().find(|open| !is_cut && open.left.0 == left.0 && open.right.0 == right.0);
-            next.push(Open { left, right, upper: before.map_or(upper, |before| before.upper) });
+            let before = open
+                .iter()
+                .find(|open| !is_cut && open.left.0 == left.0 && open.right.0 == right.0);
+            next.push(Open {
+                left,
+                right,
+                upper: before.map_or(upper, |before| before.upper),
+            });
         }
         for ended in &open {
             let goes_on = |next: &Open| {
-                next.left.0 == ended.left.0 && next.right.0 == ended.right.0 && next.upper == ended.upper
+                next.left.0 == ended.left.0
+                    && next.right.0 == ended.right.0
+                    && next.upper == ended.upper
             };
             if !next.iter().any(goes_on) {
                 pieces.push(ended.closed(upper));
@@ -97,10 +108,16 @@ impl Open {
 pub(super) fn quadrangles(rings: &[Vec<Point>]) -> Vec<[Point; 4]> {
     let turned = |point: &Point| Point::new(point.y, point.x);
     let across = trapezoids(rings, &[]);
-    let flipped: Vec<Vec<Point>> = rings.iter().map(|ring| ring.iter().map(turned).collect()).collect();
+    let flipped: Vec<Vec<Point>> = rings
+        .iter()
+        .map(|ring| ring.iter().map(turned).collect())
+        .collect();
     let along = trapezoids(&flipped, &[]);
     if along.len() < across.len() {
-        along.iter().map(|piece| piece.map(|corner| turned(&corner))).collect()
+        along
+            .iter()
+            .map(|piece| piece.map(|corner| turned(&corner)))
+            .collect()
     } else {
         across
     }
@@ -139,12 +156,17 @@ pub(super) fn convex(ring: &[Point]) -> bool {
 /// The part of a triangle that lies in a convex polygon, as triangles.
 pub(super) fn triangles_within(triangle: [Point; 3], polygon: &[Point]) -> Vec<[Point; 3]> {
     let [a, b, c] = triangle;
-    let around = polygon.iter().fold(0.0, |sum, corner| sum + corner.x + corner.y);
+    let around = polygon
+        .iter()
+        .fold(0.0, |sum, corner| sum + corner.x + corner.y);
     if !around.is_finite() || polygon.len() < 3 {
         return Vec::new();
     }
     let middle = polygon.iter().fold(Point::default(), |sum, corner| {
-        sum.moved(corner.x / polygon.len() as f64, corner.y / polygon.len() as f64)
+        sum.moved(
+            corner.x / polygon.len() as f64,
+            corner.y / polygon.len() as f64,
+        )
     });
     let mut rest = vec![a, b, c];
     for (&from, &to) in polygon.iter().zip(polygon.iter().cycle().skip(1)) {
@@ -168,7 +190,9 @@ pub(super) fn triangles_within(triangle: [Point; 3], polygon: &[Point]) -> Vec<[
             return Vec::new();
         }
     }
-    let Some(&first) = rest.first() else { return Vec::new() };
+    let Some(&first) = rest.first() else {
+        return Vec::new();
+    };
     rest.windows(2)
         .skip(1)
         .filter_map(|pair| match *pair {
@@ -188,13 +212,27 @@ mod tests {
 
     fn area(corners: &[Point]) -> f64 {
         let next = corners.iter().cycle().skip(1);
-        corners.iter().zip(next).map(|(a, b)| a.cross(*b)).sum::<f64>().abs() / 2.0
+        corners
+            .iter()
+            .zip(next)
+            .map(|(a, b)| a.cross(*b))
+            .sum::<f64>()
+            .abs()
+            / 2.0
     }
 
     /// Areas by the shoelace formula.
     #[test]
     fn trapezoids_cover_the_inside_and_no_more() {
-        let comb = ring(&[(0.0, 0.0), (10.0, 0.0), (10.0, 6.0), (8.0, 2.0), (6.0, 7.0), (3.0, 1.0), (0.0, 5.0)]);
+        let comb = ring(&[
+            (0.0, 0.0),
+            (10.0, 0.0),
+            (10.0, 6.0),
+            (8.0, 2.0),
+            (6.0, 7.0),
+            (3.0, 1.0),
+            (0.0, 5.0),
+        ]);
         let hole = ring(&[(4.0, 0.2), (5.0, 0.2), (5.0, 0.8), (4.0, 0.8)]);
         let wanted = area(&comb) - area(&hole);
         for cuts in [&[][..], &[0.5, 1.5, 3.25, 99.0]] {
@@ -202,14 +240,18 @@ mod tests {
             let covered: f64 = pieces.iter().map(|piece| area(piece)).sum();
             assert!((covered - wanted).abs() < 1e-9, "{covered} {wanted}");
         }
-        let covered: f64 = quadrangles(&[comb, hole]).iter().map(|piece| area(piece)).sum();
+        let covered: f64 = quadrangles(&[comb, hole])
+            .iter()
+            .map(|piece| area(piece))
+            .sum();
         assert!((covered - wanted).abs() < 1e-9, "{covered} {wanted}");
     }
 
     /// A band between two waves needs a piece for each step along it, not for each height.
     #[test]
     fn a_long_band_takes_few_pieces() {
-        let wave = |k: i32, lift: f64| Point::new(f64::from(k), lift + libm::sin(f64::from(k) * 0.37));
+        let wave =
+            |k: i32, lift: f64| Point::new(f64::from(k), lift + libm::sin(f64::from(k) * 0.37));
         let mut band: Vec<Point> = (0..200).map(|k| wave(k, 0.0)).collect();
         band.extend((0..200).rev().map(|k| wave(k, 5.0)));
         let pieces = quadrangles(&[band.clone()]);
@@ -220,8 +262,18 @@ mod tests {
 
     #[test]
     fn convex_rings_are_told_from_others() {
-        assert!(convex(&ring(&[(0.0, 0.0), (4.0, 0.0), (4.0, 3.0), (0.0, 3.0)])));
-        assert!(!convex(&ring(&[(0.0, 0.0), (4.0, 0.0), (1.0, 1.0), (0.0, 3.0)])));
+        assert!(convex(&ring(&[
+            (0.0, 0.0),
+            (4.0, 0.0),
+            (4.0, 3.0),
+            (0.0, 3.0)
+        ])));
+        assert!(!convex(&ring(&[
+            (0.0, 0.0),
+            (4.0, 0.0),
+            (1.0, 1.0),
+            (0.0, 3.0)
+        ])));
         // A five-pointed star drawn in one stroke.
         let star: Vec<(f64, f64)> = (0..5)
             .map(|k| {
@@ -240,7 +292,11 @@ mod tests {
         let covered: f64 = pieces.iter().map(|piece| area(piece)).sum();
         // The triangle covers the square's right half: its sides leave it outside.
         assert!((covered - 0.5).abs() < 1e-9, "{covered}");
-        let far = [Point::new(5.0, 5.0), Point::new(6.0, 5.0), Point::new(5.0, 6.0)];
+        let far = [
+            Point::new(5.0, 5.0),
+            Point::new(6.0, 5.0),
+            Point::new(5.0, 6.0),
+        ];
         assert!(triangles_within(far, &square).is_empty());
     }
 }

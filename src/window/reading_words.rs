@@ -71,15 +71,27 @@ pub fn plain(value: f64, decimals: usize) -> String {
 }
 
 fn number(name: &'static str, number: String, unit: impl Into<String>) -> Line {
-    Line { name, value: Value::Number { number, unit: unit.into() } }
+    Line {
+        name,
+        value: Value::Number {
+            number,
+            unit: unit.into(),
+        },
+    }
 }
 
 fn words(name: &'static str, text: impl Into<String>) -> Line {
-    Line { name, value: Value::Words(text.into()) }
+    Line {
+        name,
+        value: Value::Words(text.into()),
+    }
 }
 
 fn sentence(text: impl Into<String>) -> Line {
-    Line { name: "", value: Value::Sentence(text.into()) }
+    Line {
+        name: "",
+        value: Value::Sentence(text.into()),
+    }
 }
 
 /// Distance: the Moon's needs another figure.
@@ -90,7 +102,13 @@ fn distance(body: Body, au: f64) -> String {
 /// Right ascension to a tenth of a second.
 fn right_ascension(angle: Angle) -> String {
     let tenths = (angle.wrapped().hours() * 36_000.0).round() as i64 % 864_000;
-    format!("{}h {:02}m {:02}.{}s", tenths / 36_000, tenths / 600 % 60, tenths / 10 % 60, tenths % 10)
+    format!(
+        "{}h {:02}m {:02}.{}s",
+        tenths / 36_000,
+        tenths / 600 % 60,
+        tenths / 10 % 60,
+        tenths % 10
+    )
 }
 
 /// Declination to a second.
@@ -101,7 +119,12 @@ fn declination(angle: Angle) -> String {
         _ if seconds != 0 => "+",
         _ => "",
     };
-    format!("{sign}{}\u{b0} {:02}\u{2032} {:02}\u{2033}", seconds / 3600, seconds / 60 % 60, seconds % 60)
+    format!(
+        "{sign}{}\u{b0} {:02}\u{2032} {:02}\u{2033}",
+        seconds / 3600,
+        seconds / 60 % 60,
+        seconds % 60
+    )
 }
 
 /// `5.4° behind the ridge`
@@ -126,9 +149,9 @@ impl Column {
             .filter(|readings| readings.body != subject.body)
             .map(|readings| Row {
                 name: readings.body.name(),
-                elongation: readings
-                    .elongation
-                    .map(|elongation| (plain(elongation.angle.degrees(), 1), side(elongation.side))),
+                elongation: readings.elongation.map(|elongation| {
+                    (plain(elongation.angle.degrees(), 1), side(elongation.side))
+                }),
                 distance: distance(readings.body, readings.distance_au),
                 magnitude: signed(readings.magnitude.value, 1),
             })
@@ -158,7 +181,9 @@ impl Column {
             let elongation = row
                 .elongation
                 .as_ref()
-                .map_or_else(String::new, |(angle, side)| format!("elongation {angle}\u{b0} {side}, "));
+                .map_or_else(String::new, |(angle, side)| {
+                    format!("elongation {angle}\u{b0} {side}, ")
+                });
             text.push_str(&format!(
                 "{}: {elongation}distance {} au, magnitude {}\n",
                 row.name, row.distance, row.magnitude
@@ -201,7 +226,10 @@ fn cautions(plan: &Plan, moment: &Moment, subject: &Readings) -> Vec<String> {
         let mut sentence = super::capitalised(caution.sentence());
         if caution == Caution::DeltaTModelled {
             let delta_t = plan.sky.tables().delta_t(moment.instant);
-            sentence.push_str(&format!(": clock times may be {:.0} s off", delta_t.error_seconds.ceil()));
+            sentence.push_str(&format!(
+                ": clock times may be {:.0} s off",
+                delta_t.error_seconds.ceil()
+            ));
         }
         sentences.push(sentence + ".");
     }
@@ -209,26 +237,48 @@ fn cautions(plan: &Plan, moment: &Moment, subject: &Readings) -> Vec<String> {
 }
 
 fn large(subject: &Readings) -> Vec<Line> {
-    let (angle, unit) = subject.elongation.map_or((String::from("0.0"), String::from("\u{b0}")), |elongation| {
-        (plain(elongation.angle.degrees(), 1), format!("\u{b0} {}", side(elongation.side)))
-    });
+    let (angle, unit) = subject.elongation.map_or(
+        (String::from("0.0"), String::from("\u{b0}")),
+        |elongation| {
+            (
+                plain(elongation.angle.degrees(), 1),
+                format!("\u{b0} {}", side(elongation.side)),
+            )
+        },
+    );
     vec![
         number("elongation", angle, unit),
-        number("distance", distance(subject.body, subject.distance_au), "au"),
+        number(
+            "distance",
+            distance(subject.body, subject.distance_au),
+            "au",
+        ),
         number("magnitude", signed(subject.magnitude.value, 2), ""),
     ]
 }
 
 fn small(plan: &Plan, subject: &Readings, moment: &Moment, tonight: Option<&Tonight>) -> Vec<Line> {
     let mut lines = vec![
-        number("altitude", plain(subject.apparent_altitude.degrees(), 1), "\u{b0}"),
+        number(
+            "altitude",
+            plain(subject.apparent_altitude.degrees(), 1),
+            "\u{b0}",
+        ),
         number("azimuth", plain(subject.azimuth.degrees(), 1), "\u{b0}"),
         sentence(super::capitalised(&over_skyline(subject))),
     ];
-    if let Some(passage) = tonight.and_then(|tonight| tonight.next_skyline_passage(moment.instant)) {
-        let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    if let Some(passage) = tonight.and_then(|tonight| tonight.next_skyline_passage(moment.instant))
+    {
+        let clock = LocalClock {
+            scenario: &plan.scenario,
+            sky: &plan.sky,
+        };
         let part = passage.part.as_deref().unwrap_or("the skyline");
-        let verb = if passage.clears { "clears" } else { "goes behind" };
+        let verb = if passage.clears {
+            "clears"
+        } else {
+            "goes behind"
+        };
         lines.push(sentence(format!(
             "{} {part} at {}, az {:.0}\u{b0}",
             super::capitalised(verb),
@@ -240,8 +290,16 @@ fn small(plan: &Plan, subject: &Readings, moment: &Moment, tonight: Option<&Toni
     let per_day = subject.longitude_per_day.degrees();
     lines.extend([
         number("diameter", plain(subject.diameter.arcsec(), 1), "\u{2033}"),
-        number("lit", plain(100.0 * subject.lit_fraction.unwrap_or(1.0), 1), "%"),
-        number("motion", signed(per_day, 3), format!("\u{b0} a day, {}", subject.sense().word())),
+        number(
+            "lit",
+            plain(100.0 * subject.lit_fraction.unwrap_or(1.0), 1),
+            "%",
+        ),
+        number(
+            "motion",
+            signed(per_day, 3),
+            format!("\u{b0} a day, {}", subject.sense().word()),
+        ),
         words("in", subject.constellation.name()),
         words("RA", right_ascension(subject.equatorial.longitude)),
         words("Dec", declination(subject.equatorial.latitude)),
@@ -251,10 +309,17 @@ fn small(plan: &Plan, subject: &Readings, moment: &Moment, tonight: Option<&Toni
 
 /// Rise, culmination, set of the night, in words where one is missing.
 fn passages(plan: &Plan, tonight: Option<&Tonight>) -> Vec<Line> {
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     let waiting = || String::from("\u{2026}");
     let Some(passages) = tonight.and_then(|tonight| tonight.of(plan.season.subject)) else {
-        return vec![words("rises", waiting()), words("culminates", waiting()), words("sets", waiting())];
+        return vec![
+            words("rises", waiting()),
+            words("culminates", waiting()),
+            words("sets", waiting()),
+        ];
     };
     let mut lines = Vec::new();
     let never = match passages.course {
@@ -265,7 +330,13 @@ fn passages(plan: &Plan, tonight: Option<&Tonight>) -> Vec<Line> {
     let passage = |event: Option<crate::season::horizon::HorizonEvent>| {
         event.map_or_else(
             || String::from(never),
-            |event| format!("{}, az {:.0}\u{b0}", clock.time(event.instant), event.value.degrees()),
+            |event| {
+                format!(
+                    "{}, az {:.0}\u{b0}",
+                    clock.time(event.instant),
+                    event.value.degrees()
+                )
+            },
         )
     };
     lines.push(words("rises", passage(passages.rise)));
@@ -273,7 +344,13 @@ fn passages(plan: &Plan, tonight: Option<&Tonight>) -> Vec<Line> {
         "culminates",
         passages.culmination.map_or_else(
             || String::from("not this night"),
-            |transit| format!("{}, {}\u{b0} up", clock.time(transit.instant), plain(transit.altitude.degrees(), 0)),
+            |transit| {
+                format!(
+                    "{}, {}\u{b0} up",
+                    clock.time(transit.instant),
+                    plain(transit.altitude.degrees(), 0)
+                )
+            },
         ),
     ));
     lines.push(words("sets", passage(passages.set)));
@@ -281,30 +358,53 @@ fn passages(plan: &Plan, tonight: Option<&Tonight>) -> Vec<Line> {
 }
 
 fn sky(plan: &Plan, moment: &Moment, tonight: Option<&Tonight>) -> Vec<Line> {
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     let state = &moment.sky;
     let up = if state.moon_is_up { "up" } else { "down" };
     let mut lines = vec![
         words("sky", state.twilight.phrase()),
-        number("Sun", plain(state.sun_altitude.degrees(), 1), "\u{b0} altitude"),
-        words("Moon", format!("{}, {:.0} %, {up}", state.moon_phase(), 100.0 * state.moon_lit)),
+        number(
+            "Sun",
+            plain(state.sun_altitude.degrees(), 1),
+            "\u{b0} altitude",
+        ),
+        words(
+            "Moon",
+            format!(
+                "{}, {:.0} %, {up}",
+                state.moon_phase(),
+                100.0 * state.moon_lit
+            ),
+        ),
     ];
     if let Some(tonight) = tonight {
         let at = |kind: HorizonKind| {
-            tonight.sun.iter().find(|event| event.kind == kind).map(|event| clock.time(event.instant))
+            tonight
+                .sun
+                .iter()
+                .find(|event| event.kind == kind)
+                .map(|event| clock.time(event.instant))
         };
-        let set = at(HorizonKind::Set).map_or_else(|| String::from("none"), |time| time);
-        let rise = at(HorizonKind::Rise).map_or_else(|| String::from("none"), |time| time);
+        let set = at(HorizonKind::Set).unwrap_or_else(|| String::from("none"));
+        let rise = at(HorizonKind::Rise).unwrap_or_else(|| String::from("none"));
         lines.push(words("sunset", format!("{set}, sunrise {rise}")));
-        let dark = match (at(HorizonKind::AstronomicalDusk), at(HorizonKind::AstronomicalDawn)) {
+        let dark = match (
+            at(HorizonKind::AstronomicalDusk),
+            at(HorizonKind::AstronomicalDawn),
+        ) {
             (Some(from), Some(to)) => format!("{from} to {to}"),
             (Some(from), None) => format!("from {from}"),
             (None, Some(to)) => format!("until {to}"),
-            (None, None) => String::from(if state.twilight == crate::season::moment::Twilight::Night {
-                "all night"
-            } else {
-                "no full darkness"
-            }),
+            (None, None) => String::from(
+                if state.twilight == crate::season::moment::Twilight::Night {
+                    "all night"
+                } else {
+                    "no full darkness"
+                },
+            ),
         };
         lines.push(words("dark", dark));
     }
@@ -317,16 +417,25 @@ mod tests {
 
     #[test]
     fn angles_carry_into_the_next_unit() {
-        assert_eq!(right_ascension(Angle::from_hours(23.999_999_9)), "0h 00m 00.0s");
+        assert_eq!(
+            right_ascension(Angle::from_hours(23.999_999_9)),
+            "0h 00m 00.0s"
+        );
         assert_eq!(right_ascension(Angle::from_hours(10.07)), "10h 04m 12.0s");
-        assert_eq!(declination(Angle::from_degrees(-0.000_05)), "0\u{b0} 00\u{2032} 00\u{2033}");
-        assert_eq!(declination(Angle::from_degrees(-9.999_95)), "\u{2212}10\u{b0} 00\u{2032} 00\u{2033}");
+        assert_eq!(
+            declination(Angle::from_degrees(-0.000_05)),
+            "0\u{b0} 00\u{2032} 00\u{2033}"
+        );
+        assert_eq!(
+            declination(Angle::from_degrees(-9.999_95)),
+            "\u{2212}10\u{b0} 00\u{2032} 00\u{2033}"
+        );
     }
 
     #[test]
     fn signs_are_true() {
         assert_eq!(signed(-1.16, 2), "\u{2212}1.16");
         assert_eq!(signed(0.001, 2), "0.00");
-        assert_eq!(plain(3.14, 1), "3.1");
+        assert_eq!(plain(3.12, 1), "3.1");
     }
 }

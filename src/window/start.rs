@@ -32,7 +32,9 @@ pub enum NoWindow {
 /// # Errors
 /// Why there is no window.
 pub fn open(scenario: Scenario, path: Option<PathBuf>, now: Tt) -> Result<(), NoWindow> {
-    let Some(display) = display() else { return Err(NoWindow::NoDisplay) };
+    let Some(display) = display() else {
+        return Err(NoWindow::NoDisplay);
+    };
     let options = eframe::NativeOptions {
         viewport: egui::ViewportBuilder::default()
             .with_title("Loopwright")
@@ -62,7 +64,12 @@ pub fn open(scenario: Scenario, path: Option<PathBuf>, now: Tt) -> Result<(), No
             options,
             Box::new(move |context| {
                 of_window.store(true, Ordering::Relaxed);
-                Ok(Box::new(Window::new(&context.egui_ctx, scenario, path, now)?))
+                Ok(Box::new(Window::new(
+                    &context.egui_ctx,
+                    scenario,
+                    path,
+                    now,
+                )?))
             }),
         )
     }));
@@ -98,7 +105,9 @@ fn display() -> Option<String> {
 
 fn reason(error: &eframe::Error, display: String) -> NoWindow {
     match error {
-        eframe::Error::Glutin(_) | eframe::Error::NoGlutinConfigs(..) | eframe::Error::OpenGL(_) => NoWindow::NoGraphics,
+        eframe::Error::Glutin(_)
+        | eframe::Error::NoGlutinConfigs(..)
+        | eframe::Error::OpenGL(_) => NoWindow::NoGraphics,
         _ => NoWindow::Unreachable(display),
     }
 }

@@ -101,7 +101,13 @@ pub struct Document {
 impl Document {
     #[must_use]
     pub fn new(scenario: Arc<Scenario>, path: Option<PathBuf>) -> Self {
-        Document { saved: Arc::clone(&scenario), scenario, path, undo: Vec::new(), redo: Vec::new() }
+        Document {
+            saved: Arc::clone(&scenario),
+            scenario,
+            path,
+            undo: Vec::new(),
+            redo: Vec::new(),
+        }
     }
 
     /// Whether it differs from what stands in the file.
@@ -133,7 +139,8 @@ impl Document {
 
     fn go_back(&mut self) {
         if let Some(before) = self.undo.pop() {
-            self.redo.push(std::mem::replace(&mut self.scenario, before));
+            self.redo
+                .push(std::mem::replace(&mut self.scenario, before));
         }
     }
 
@@ -220,10 +227,17 @@ pub struct State {
 fn with_stepper<T>(plan: &Plan, work: impl FnOnce(&Stepper<'_>) -> T) -> T {
     let scenario = &plan.scenario;
     let zone_offset = |utc: Utc| {
-        let local = scenario.zone.local_from_utc(scenario.site.longitude, utc).ok()?;
+        let local = scenario
+            .zone
+            .local_from_utc(scenario.site.longitude, utc)
+            .ok()?;
         Some(f64::from(local.offset_seconds))
     };
-    work(&Stepper { sky: &plan.sky, site: &scenario.site, zone_offset: &zone_offset })
+    work(&Stepper {
+        sky: &plan.sky,
+        site: &scenario.site,
+        zone_offset: &zone_offset,
+    })
 }
 
 /// Events that the timeline marks and that can be jumped to.
@@ -263,10 +277,10 @@ impl State {
             Action::GoTo(instant) => self.go_to(instant),
             Action::GoToDay(instant) => self.go_to_day(instant),
             Action::Step(count) => self.step(count),
-            Action::NextEvent => self.to_event(|now, event| event > now, false),
-            Action::PreviousEvent => self.to_event(|now, event| event < now, true),
-            Action::SeasonStart => self.to_season(|span| span.from),
-            Action::SeasonEnd => self.to_season(|span| span.to),
+            Action::NextEvent => self.go_to_event(|now, event| event > now, false),
+            Action::PreviousEvent => self.go_to_event(|now, event| event < now, true),
+            Action::SeasonStart => self.go_to_season(|span| span.from),
+            Action::SeasonEnd => self.go_to_season(|span| span.to),
             Action::SetHold(hold) => {
                 self.view.hold = hold;
                 self.view.anchor = None;
@@ -310,7 +324,10 @@ impl State {
 
     /// Puts a season on screen.
     pub fn take_plan(&mut self, plan: Arc<Plan>) {
-        let is_other_subject = self.plan.as_ref().is_some_and(|old| old.season.subject != plan.season.subject);
+        let is_other_subject = self
+            .plan
+            .as_ref()
+            .is_some_and(|old| old.season.subject != plan.season.subject);
         if self.view.is_new || is_other_subject || !plan.season.span.contains(self.view.instant) {
             self.view.instant = first_look(&plan);
             self.view.sky = None;
@@ -323,11 +340,17 @@ impl State {
     }
 
     pub fn say(&mut self, text: impl Into<String>) {
-        self.notice = Some(Notice { text: text.into(), is_error: false });
+        self.notice = Some(Notice {
+            text: text.into(),
+            is_error: false,
+        });
     }
 
     pub fn complain(&mut self, text: impl Into<String>) {
-        self.notice = Some(Notice { text: text.into(), is_error: true });
+        self.notice = Some(Notice {
+            text: text.into(),
+            is_error: true,
+        });
     }
 
     /// The season's span, its last instant included, which is where tracks end.
@@ -373,17 +396,22 @@ impl State {
     }
 
     fn days_on(&mut self, days: i32) {
-        let Some(plan) = self.plan.clone() else { return };
+        let Some(plan) = self.plan.clone() else {
+            return;
+        };
         let (hold, instant) = (self.view.hold, self.view.instant);
         let total = self.view.days.saturating_add(days);
         let anchored = self.view.anchor.filter(|anchor| anchor.hold() == hold);
-        let result = with_stepper(&plan, |stepper| -> Result<(Anchor, i32, Stepped), HoldError> {
-            let (anchor, total) = match anchored {
-                Some(anchor) => (anchor, total),
-                None => (Anchor::new(stepper, instant, hold)?, days),
-            };
-            Ok((anchor, total, anchor.after(stepper, total)?))
-        });
+        let result = with_stepper(
+            &plan,
+            |stepper| -> Result<(Anchor, i32, Stepped), HoldError> {
+                let (anchor, total) = match anchored {
+                    Some(anchor) => (anchor, total),
+                    None => (Anchor::new(stepper, instant, hold)?, days),
+                };
+                Ok((anchor, total, anchor.after(stepper, total)?))
+            },
+        );
         match result {
             Ok((anchor, total, stepped)) if within(plan.season.span, stepped.instant) => {
                 self.view.anchor = Some(anchor);
@@ -402,7 +430,7 @@ impl State {
         }
     }
 
-    fn to_event(&mut self, wanted: impl Fn(f64, f64) -> bool, last: bool) {
+    fn go_to_event(&mut self, wanted: impl Fn(f64, f64) -> bool, last: bool) {
         let Some(plan) = &self.plan else { return };
         // A second of difference is no other event.
         let now = self.view.instant.days();
@@ -412,17 +440,25 @@ impl State {
             .events
             .iter()
             .filter(|event| is_marked(event) && wanted(now + slack, event.instant.days()));
-        let event = if last { found.next_back() } else { found.next() };
+        let event = if last {
+            found.next_back()
+        } else {
+            found.next()
+        };
         match event.map(|event| (event.instant, event.kind.phrase())) {
             Some((instant, phrase)) => {
                 self.go_to(instant);
                 self.say(super::capitalised(phrase));
             }
-            None => self.say(if last { "No event before this in the season." } else { "No event after this in the season." }),
+            None => self.say(if last {
+                "No event before this in the season."
+            } else {
+                "No event after this in the season."
+            }),
         }
     }
 
-    fn to_season(&mut self, end: impl Fn(Span) -> Tt) {
+    fn go_to_season(&mut self, end: impl Fn(Span) -> Tt) {
         if let Some(plan) = &self.plan {
             let instant = end(plan.season.span);
             self.go_to(instant);
@@ -434,7 +470,11 @@ impl State {
             Ok(scenario) => {
                 let (text_scale, skyline) = (self.view.text_scale, self.view.skyline);
                 let scenario = Arc::new(scenario);
-                self.view = View { text_scale, skyline, ..View::of(&scenario) };
+                self.view = View {
+                    text_scale,
+                    skyline,
+                    ..View::of(&scenario)
+                };
                 self.document = Document::new(scenario, Some(path.to_owned()));
                 self.say(format!("{} opened.", path.display()));
             }
@@ -473,6 +513,10 @@ fn within(span: Span, instant: Tt) -> bool {
 /// A place in a list, moved and kept within it.
 fn moved(place: usize, places: i32, count: usize) -> usize {
     let steps = usize::try_from(places.unsigned_abs()).unwrap_or(usize::MAX);
-    let there = if places < 0 { place.saturating_sub(steps) } else { place.saturating_add(steps) };
+    let there = if places < 0 {
+        place.saturating_sub(steps)
+    } else {
+        place.saturating_add(steps)
+    };
     there.min(count.saturating_sub(1))
 }

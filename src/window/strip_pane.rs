@@ -9,7 +9,10 @@ use egui::{Sense, Ui, WidgetInfo};
 
 use super::painter::{Easel, Picture, Placement, Shift};
 use super::state::{Action, View};
-use crate::chart::{Level, MarkId, Palette, Point, Scene, StripLayout, StripRow, StripText, StripView, StripWindow, strip};
+use crate::chart::{
+    Level, MarkId, Palette, Point, Scene, StripLayout, StripRow, StripText, StripView, StripWindow,
+    strip,
+};
 use crate::scenario::Plan;
 use crate::season::{Season, Track};
 use crate::sheet::words::LocalClock;
@@ -42,11 +45,19 @@ impl StripMade {
     #[must_use]
     pub fn new(plan: Arc<Plan>, view: StripView) -> Self {
         // Without its stars, which only a damaged build lacks, the path can still be read.
-        let stars = StarCatalogue::embedded().map(StarCatalogue::stars).unwrap_or_default();
+        let stars = StarCatalogue::embedded()
+            .map(StarCatalogue::stars)
+            .unwrap_or_default();
         let text = strip_text(&plan);
         let scene = strip(&plan.season, stars, &text, &view);
         let layout = view.layout(&plan.season, &text);
-        StripMade { plan, view, text, scene, layout }
+        StripMade {
+            plan,
+            view,
+            text,
+            scene,
+            layout,
+        }
     }
 }
 
@@ -77,9 +88,9 @@ impl StripPane {
     /// Whether what is on screen is what should be.
     #[must_use]
     pub fn is_current(&self, plan: &Arc<Plan>) -> bool {
-        self.made
-            .as_ref()
-            .is_some_and(|made| Arc::ptr_eq(&made.plan, plan) && Some(&made.view) == self.wanted.as_ref())
+        self.made.as_ref().is_some_and(|made| {
+            Arc::ptr_eq(&made.plan, plan) && Some(&made.view) == self.wanted.as_ref()
+        })
     }
 }
 
@@ -97,7 +108,11 @@ pub fn show(
     let size = ui.available_size();
     let (rect, response) = ui.allocate_exact_size(size, Sense::click_and_drag());
     let scale = SHEET_SCALE * f64::from(text_scale);
-    let placement = Placement { left: f64::from(rect.left()), top: f64::from(rect.top()), scale };
+    let placement = Placement {
+        left: f64::from(rect.left()),
+        top: f64::from(rect.top()),
+        scale,
+    };
     let wanted = StripView {
         width: (f64::from(rect.width()) / scale).round(),
         height: (f64::from(rect.height()) / scale).round(),
@@ -119,7 +134,10 @@ pub fn show(
             .as_ref()
             .is_some_and(|(of, picture)| Arc::ptr_eq(of, &made) && *picture.easel() == easel);
         if !fits {
-            pane.picture = Some((Arc::clone(&made), Picture::new(&made.scene, easel.clone(), Level::of_strip)));
+            pane.picture = Some((
+                Arc::clone(&made),
+                Picture::new(&made.scene, easel.clone(), Level::of_strip),
+            ));
         }
         let shift = shift(&made, &wanted, &placement);
         // Over a picture that is still where it was, nothing of the moment would stand right.
@@ -129,7 +147,12 @@ pub fn show(
         if let Some((_, picture)) = &pane.picture
             && ui.is_rect_visible(rect)
         {
-            let frames: Vec<egui::Rect> = made.layout.rows.iter().map(|row| placement.rect(&row.frame)).collect();
+            let frames: Vec<egui::Rect> = made
+                .layout
+                .rows
+                .iter()
+                .map(|row| placement.rect(&row.frame))
+                .collect();
             picture.show(ui.painter(), shift, &frames, over.as_ref());
         }
         pane.hover = None;
@@ -151,7 +174,10 @@ pub fn show(
             && let Some(pos) = response.interact_pointer_pos()
             && response.drag_delta() != egui::Vec2::ZERO
         {
-            let (to, from) = (placement.point(pos), placement.point(pos - response.drag_delta()));
+            let (to, from) = (
+                placement.point(pos),
+                placement.point(pos - response.drag_delta()),
+            );
             actions.extend(panned(&wanted, plan, from, to));
         }
     }
@@ -166,8 +192,12 @@ pub fn show(
 
 /// Arrow keys belong to the painted area that has the focus, and its outline says so.
 pub(super) fn focus_ring(ui: &Ui, rect: egui::Rect, palette: &Palette) {
-    let ring = egui::Stroke::new(1.0, super::theme::colour(palette.colour(crate::chart::Role::Selection)));
-    ui.painter().rect_stroke(rect.shrink(1.0), 2.0, ring, egui::StrokeKind::Inside);
+    let ring = egui::Stroke::new(
+        1.0,
+        super::theme::colour(palette.colour(crate::chart::Role::Selection)),
+    );
+    ui.painter()
+        .rect_stroke(rect.shrink(1.0), 2.0, ring, egui::StrokeKind::Inside);
 }
 
 /// The rows of a view, without laying the chart out.
@@ -182,14 +212,20 @@ fn shift(made: &StripMade, wanted: &StripView, placement: &Placement) -> Shift {
         return Shift::NONE;
     }
     let next = layout(wanted, &made.plan);
-    let ([old], [new]) = (made.layout.rows.as_slice(), next.rows.as_slice()) else { return Shift::NONE };
+    let ([old], [new]) = (made.layout.rows.as_slice(), next.rows.as_slice()) else {
+        return Shift::NONE;
+    };
     let scale = new.scale / old.scale;
     let from = placement.at_f64(old.point(old.longitude, old.latitude));
     let to = placement.at_f64(new.point(old.longitude, old.latitude));
     if !(scale.is_finite() && (0.1..10.0).contains(&scale)) {
         return Shift::NONE;
     }
-    Shift { scale, dx: to.0 - from.0 * scale, dy: to.1 - from.1 * scale }
+    Shift {
+        scale,
+        dx: to.0 - from.0 * scale,
+        dy: to.1 - from.1 * scale,
+    }
 }
 
 /// The row that a change of view starts from: that under the pointer.
@@ -255,7 +291,10 @@ pub fn on_loop(season: &Season, frame_aspect: f64, instant: Tt) -> Option<StripW
         (of.station_retrograde.instant.days() + of.station_direct.instant.days()) / 2.0
     };
     let apart = |of: &crate::season::Loop| (middle(of) - instant.days()).abs();
-    let nearest = season.loops.iter().min_by(|a, b| apart(a).total_cmp(&apart(b)))?;
+    let nearest = season
+        .loops
+        .iter()
+        .min_by(|a, b| apart(a).total_cmp(&apart(b)))?;
     let more = AROUND * nearest.duration_days();
     let from = nearest.station_retrograde.instant.days() - more;
     let to = nearest.station_direct.instant.days() + more;
@@ -271,10 +310,22 @@ pub fn on_loop(season: &Season, frame_aspect: f64, instant: Tt) -> Option<StripW
         .collect();
     let &(start, _) = places.first()?;
     let east = |longitude: f64| Angle::from_degrees(longitude - start).signed().degrees();
-    let low = places.iter().map(|place| east(place.0)).fold(f64::INFINITY, f64::min);
-    let high = places.iter().map(|place| east(place.0)).fold(f64::NEG_INFINITY, f64::max);
-    let south = places.iter().map(|place| place.1).fold(f64::INFINITY, f64::min);
-    let north = places.iter().map(|place| place.1).fold(f64::NEG_INFINITY, f64::max);
+    let low = places
+        .iter()
+        .map(|place| east(place.0))
+        .fold(f64::INFINITY, f64::min);
+    let high = places
+        .iter()
+        .map(|place| east(place.0))
+        .fold(f64::NEG_INFINITY, f64::max);
+    let south = places
+        .iter()
+        .map(|place| place.1)
+        .fold(f64::INFINITY, f64::min);
+    let north = places
+        .iter()
+        .map(|place| place.1)
+        .fold(f64::NEG_INFINITY, f64::max);
     // Room for words around the path.
     let across = ((high - low) * 1.35).max((north - south) * 1.9 * frame_aspect);
     Some(StripWindow {
@@ -294,7 +345,10 @@ struct Under {
 impl Under {
     fn at(made: &StripMade, point: Point, reach: f64) -> Option<Self> {
         let row = made.layout.row_at(point)?;
-        let clock = LocalClock { scenario: &made.plan.scenario, sky: &made.plan.sky };
+        let clock = LocalClock {
+            scenario: &made.plan.scenario,
+            sky: &made.plan.sky,
+        };
         let season = &made.plan.season;
         for hit in made.scene.hit(point, reach) {
             let found = match hit.id {
@@ -302,9 +356,9 @@ impl Under {
                     let track = track_of(season, body)?;
                     let instant = instant_on(track, season, row, index, point)?;
                     let sample = track.points.get(index)?;
-                    let magnitude = sample
-                        .magnitude
-                        .map_or_else(String::new, |magnitude| format!(", magnitude {}", signed(magnitude, 1)));
+                    let magnitude = sample.magnitude.map_or_else(String::new, |magnitude| {
+                        format!(", magnitude {}", signed(magnitude, 1))
+                    });
                     let angle = if body == crate::sky::Body::Sun {
                         String::new()
                     } else {
@@ -322,26 +376,40 @@ impl Under {
                 MarkId::Event(index) => {
                     let event = season.events.get(index)?;
                     Under {
-                        words: format!("{}, {}", super::capitalised(event.kind.phrase()), clock.long(event.instant)),
+                        words: format!(
+                            "{}, {}",
+                            super::capitalised(event.kind.phrase()),
+                            clock.long(event.instant)
+                        ),
                         instant: Some(event.instant),
                     }
                 }
                 MarkId::Tick(index) | MarkId::OtherTick { date: index, .. } => {
                     let instant = made.text.dates.get(index)?.instant;
-                    Under { words: clock.long(instant), instant: Some(instant) }
+                    Under {
+                        words: clock.long(instant),
+                        instant: Some(instant),
+                    }
                 }
                 MarkId::Star(hip) => {
                     let star = StarCatalogue::embedded().ok()?.by_hip(hip)?;
-                    let name = star.name.map_or_else(|| format!("HIP {hip}"), str::to_owned);
-                    Under { words: format!("{name}, magnitude {}", signed(star.magnitude, 1)), instant: None }
+                    let name = star
+                        .name
+                        .map_or_else(|| format!("HIP {hip}"), str::to_owned);
+                    Under {
+                        words: format!("{name}, magnitude {}", signed(star.magnitude, 1)),
+                        instant: None,
+                    }
                 }
                 _ => continue,
             };
             return Some(found);
         }
         let (longitude, latitude) = row.place(point);
-        let ecliptic =
-            Vec3::from_spherical(Angle::from_degrees(longitude), Angle::from_degrees(latitude));
+        let ecliptic = Vec3::from_spherical(
+            Angle::from_degrees(longitude),
+            Angle::from_degrees(latitude),
+        );
         let direction = season.frame.ecliptic_from_icrs.transposed() * ecliptic;
         Some(Under {
             words: format!(
@@ -362,9 +430,17 @@ fn track_of(season: &Season, body: crate::sky::Body) -> Option<&Track> {
 }
 
 /// When a body passes nearest to a point of the sheet, between the neighbours of a sample.
-fn instant_on(track: &Track, season: &Season, row: &StripRow, index: usize, point: Point) -> Option<Tt> {
+fn instant_on(
+    track: &Track,
+    season: &Season,
+    row: &StripRow,
+    index: usize,
+    point: Point,
+) -> Option<Tt> {
     let first = index.saturating_sub(1);
-    let near = track.points.get(first..(index + 2).min(track.points.len()))?;
+    let near = track
+        .points
+        .get(first..(index + 2).min(track.points.len()))?;
     let at = |sample: &crate::season::TrackPoint| {
         row.point_of(season.frame.ecliptic_from_icrs * sample.direction)
     };

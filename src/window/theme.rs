@@ -2,7 +2,9 @@
 
 use std::sync::Arc;
 
-use egui::{Color32, CornerRadius, FontData, FontDefinitions, FontFamily, FontId, Stroke, TextStyle};
+use egui::{
+    Color32, CornerRadius, FontData, FontDefinitions, FontFamily, FontId, Stroke, TextStyle,
+};
 
 use crate::chart::{Font, Palette, Rgb, Role};
 use crate::scenario::Theme;
@@ -62,13 +64,25 @@ pub fn font(font: Font, size: f32) -> FontId {
 #[must_use]
 pub fn fonts() -> FontDefinitions {
     let mut fonts = FontDefinitions::default();
-    let others = fonts.families.get(&FontFamily::Proportional).cloned().unwrap_or_default();
+    let others = fonts
+        .families
+        .get(&FontFamily::Proportional)
+        .cloned()
+        .unwrap_or_default();
     for font in Font::ALL {
-        fonts.font_data.insert(font.word().to_owned(), Arc::new(FontData::from_static(font.data())));
+        fonts.font_data.insert(
+            font.word().to_owned(),
+            Arc::new(FontData::from_static(font.data())),
+        );
     }
     for font in Font::ALL {
         let mut chain: Vec<String> = vec![font.word().to_owned()];
-        chain.extend(Font::ALL.iter().filter(|other| **other != font).map(|other| other.word().to_owned()));
+        chain.extend(
+            Font::ALL
+                .iter()
+                .filter(|other| **other != font)
+                .map(|other| other.word().to_owned()),
+        );
         chain.extend(others.iter().cloned());
         fonts.families.insert(family(font), chain);
     }
@@ -78,10 +92,19 @@ pub fn fonts() -> FontDefinitions {
 /// Gives egui's own widgets the colours of a palette and text of a size.
 pub fn dress(ctx: &egui::Context, palette: &Palette, text_scale: f32) {
     let of = |role: Role| colour(palette.colour(role));
-    let (ground, plate, ink, faint) = (of(Role::Ground), of(Role::Plate), of(Role::Ink), of(Role::FaintInk));
+    let (ground, plate, ink, faint) = (
+        of(Role::Ground),
+        of(Role::Plate),
+        of(Role::Ink),
+        of(Role::FaintInk),
+    );
     let (hairline, selection) = (of(Role::Hairline), of(Role::Selection));
     let dark = palette.name != Palette::LIGHT.name;
-    ctx.set_theme(if dark { egui::Theme::Dark } else { egui::Theme::Light });
+    ctx.set_theme(if dark {
+        egui::Theme::Dark
+    } else {
+        egui::Theme::Light
+    });
     ctx.all_styles_mut(|style| {
         let visuals = &mut style.visuals;
         visuals.dark_mode = dark;
@@ -126,7 +149,10 @@ pub fn dress(ctx: &egui::Context, palette: &Palette, text_scale: f32) {
             (TextStyle::Body, font(Font::Sans, BODY * text_scale)),
             (TextStyle::Button, font(Font::Sans, BODY * text_scale)),
             (TextStyle::Monospace, font(Font::Sans, BODY * text_scale)),
-            (TextStyle::Heading, font(Font::SerifItalic, TITLE * text_scale)),
+            (
+                TextStyle::Heading,
+                font(Font::SerifItalic, TITLE * text_scale),
+            ),
         ]
         .into();
         style.spacing.item_spacing = egui::vec2(8.0, 5.0) * text_scale;

@@ -13,13 +13,13 @@ use super::painter::{Easel, Picture, Placement, Shift};
 use super::state::{Action, View};
 use super::strip_pane::{SHEET_SCALE, focus_ring};
 use crate::chart::{
-    Level, Mark, MarkId, Palette, Scene, Shape, Timeline, TimelineLayout, TimelineText, TimelineView, timeline,
-    timeline_cursor,
+    Level, Mark, MarkId, Palette, Scene, Shape, Timeline, TimelineLayout, TimelineText,
+    TimelineView, timeline, timeline_cursor,
 };
 use crate::scenario::Plan;
 use crate::season::darkness::{Darkness, Place, darkness};
-use crate::sheet::{Pixels, PngError, pixels, timeline_text};
 use crate::sheet::words::LocalClock;
+use crate::sheet::{Pixels, PngError, pixels, timeline_text};
 use crate::sky::Tt;
 use crate::sky::place::SkyError;
 
@@ -44,7 +44,11 @@ impl NightsMade {
         };
         let darkness = darkness(&plan.sky, place, plan.season.subject, plan.season.span)?;
         let text = timeline_text(&plan, &darkness);
-        Ok(NightsMade { plan, darkness, text })
+        Ok(NightsMade {
+            plan,
+            darkness,
+            text,
+        })
     }
 }
 
@@ -75,11 +79,21 @@ impl TimelineMade {
     /// Draws a timeline: tens of milliseconds.
     #[must_use]
     pub fn new(nights: Arc<NightsMade>, wanted: TimelineWanted) -> Self {
-        let timeline = timeline(&nights.plan.season, &nights.darkness, &nights.text, &wanted.view);
+        let timeline = timeline(
+            &nights.plan.season,
+            &nights.darkness,
+            &nights.text,
+            &wanted.view,
+        );
         let mut tones = timeline.scene.clone();
         tones.marks.retain(|mark| !is_written(mark));
         let image = pixels(&tones, &wanted.palette, f64::from(wanted.pixels_per_point));
-        TimelineMade { nights, wanted, timeline, image }
+        TimelineMade {
+            nights,
+            wanted,
+            timeline,
+            image,
+        }
     }
 }
 
@@ -127,7 +141,9 @@ impl TimelinePane {
 
     /// Puts what was drawn on the graphics card.
     fn load(&mut self, ctx: &egui::Context) {
-        let Some(made) = self.made.as_ref().filter(|_| self.shown.is_none()) else { return };
+        let Some(made) = self.made.as_ref().filter(|_| self.shown.is_none()) else {
+            return;
+        };
         let Ok(image) = &made.image else { return };
         let colours = egui::ColorImage::from_rgb([image.width, image.height], &image.rgb);
         let mut words = made.timeline.scene.clone();
@@ -159,7 +175,9 @@ pub fn show(
     let (rect, response) = ui.allocate_exact_size(size, Sense::click_and_drag());
     pane.hover = None;
     let Some(nights) = pane.nights.clone() else {
-        response.widget_info(|| WidgetInfo::labeled(egui::Role::Image, true, "timeline, being worked out"));
+        response.widget_info(|| {
+            WidgetInfo::labeled(egui::Role::Image, true, "timeline, being worked out")
+        });
         return actions;
     };
     let wanted = TimelineWanted {
@@ -175,7 +193,11 @@ pub fn show(
     // Image and letters both stand on whole pixels.
     let corner = rect.min.round_to_pixels(wanted.pixels_per_point);
     let easel = Easel {
-        placement: Placement { left: f64::from(corner.x), top: f64::from(corner.y), scale: 1.0 },
+        placement: Placement {
+            left: f64::from(corner.x),
+            top: f64::from(corner.y),
+            scale: 1.0,
+        },
         palette: *palette,
         pixels_per_point: wanted.pixels_per_point,
         clip: rect,
@@ -187,7 +209,8 @@ pub fn show(
     {
         let image = egui::Rect::from_min_size(corner, shown.size);
         let whole = egui::Rect::from_min_max(egui::Pos2::ZERO, egui::pos2(1.0, 1.0));
-        ui.painter().image(shown.texture.id(), image, whole, egui::Color32::WHITE);
+        ui.painter()
+            .image(shown.texture.id(), image, whole, egui::Color32::WHITE);
         let words = match shown.picture.take() {
             Some(picture) if *picture.easel() == easel => picture,
             _ => Picture::new(&shown.words, easel.clone(), |_| Level::Paper),
@@ -195,23 +218,42 @@ pub fn show(
         words.show(ui.painter(), Shift::NONE, &[], None);
         shown.picture = Some(words);
     }
-    let Some(made) = &pane.made else { return actions };
+    let Some(made) = &pane.made else {
+        return actions;
+    };
     // While the image is behind, what is pointed at is already what will be seen.
     let next = (made.wanted.view != wanted.view || !Arc::ptr_eq(&made.nights, &nights))
         .then(|| TimelineLayout::new(&nights.darkness, &nights.text, &wanted.view));
     let layout = next.as_ref().unwrap_or(&made.timeline.layout);
     if ui.is_rect_visible(rect) {
         let cursor = timeline_cursor(layout, &wanted.view, view.instant);
-        Picture::new(&cursor, easel.clone(), |_| Level::Over).show(ui.painter(), Shift::NONE, &[], None);
+        Picture::new(&cursor, easel.clone(), |_| Level::Over).show(
+            ui.painter(),
+            Shift::NONE,
+            &[],
+            None,
+        );
     }
-    actions.extend(told(ui, &response, layout, nights.darkness.nights.len(), plan, view, &nights.text));
+    actions.extend(told(
+        ui,
+        &response,
+        layout,
+        nights.darkness.nights.len(),
+        plan,
+        view,
+        &nights.text,
+    ));
     let placement = easel.placement;
     if let Some(pos) = response.interact_pointer_pos()
         && (response.dragged() || response.clicked())
     {
         let point = placement.point(pos);
         let clicked = response.clicked();
-        let way = if clicked { None } else { direction(ui, pane.drag) };
+        let way = if clicked {
+            None
+        } else {
+            direction(ui, pane.drag)
+        };
         pane.drag = way;
         if clicked {
             response.request_focus();
@@ -238,7 +280,8 @@ fn direction(ui: &Ui, before: Option<Drag>) -> Option<Drag> {
     if before.is_some() {
         return before;
     }
-    let (origin, now) = ui.input(|input| (input.pointer.press_origin(), input.pointer.interact_pos()));
+    let (origin, now) =
+        ui.input(|input| (input.pointer.press_origin(), input.pointer.interact_pos()));
     let gone = now? - origin?;
     if gone.length() < DECIDED {
         None
@@ -250,7 +293,12 @@ fn direction(ui: &Ui, before: Option<Drag>) -> Option<Drag> {
 }
 
 /// Sideways whole days pass and what is held stays; upright the hours of the one night.
-fn scrubbed(layout: &TimelineLayout, way: Drag, point: crate::chart::Point, instant: Tt) -> Option<Action> {
+fn scrubbed(
+    layout: &TimelineLayout,
+    way: Drag,
+    point: crate::chart::Point,
+    instant: Tt,
+) -> Option<Action> {
     match way {
         Drag::Nights => {
             let there = layout.same_hour_at(point.x, instant)?;
@@ -260,19 +308,33 @@ fn scrubbed(layout: &TimelineLayout, way: Drag, point: crate::chart::Point, inst
         Drag::Hours => {
             let night = layout.nights_to(instant).floor();
             let x = layout.x(night + 0.5);
-            layout.instant_at(crate::chart::Point::new(x, point.y)).map(Action::GoTo)
+            layout
+                .instant_at(crate::chart::Point::new(x, point.y))
+                .map(Action::GoTo)
         }
     }
 }
 
 /// The words for what lies under the pointer: an event near its mark, else the night and the hour.
-fn under(plan: &Plan, scene: &Scene, layout: &TimelineLayout, point: crate::chart::Point) -> Option<String> {
+fn under(
+    plan: &Plan,
+    scene: &Scene,
+    layout: &TimelineLayout,
+    point: crate::chart::Point,
+) -> Option<String> {
     const REACH: f64 = 5.0;
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     for hit in scene.hit(point, REACH) {
         if let MarkId::Event(index) = hit.id {
             let event = plan.season.events.get(index)?;
-            return Some(format!("{}, {}", super::capitalised(event.kind.phrase()), clock.long(event.instant)));
+            return Some(format!(
+                "{}, {}",
+                super::capitalised(event.kind.phrase()),
+                clock.long(event.instant)
+            ));
         }
     }
     if !layout.plot.contains(point) {
@@ -310,7 +372,10 @@ fn told(
 ) -> Vec<Action> {
     let night = layout.nights_to(view.instant).floor();
     response.widget_info(|| WidgetInfo::slider(true, night, "timeline, night of the season"));
-    let clock = LocalClock { scenario: &plan.scenario, sky: &plan.sky };
+    let clock = LocalClock {
+        scenario: &plan.scenario,
+        sky: &plan.sky,
+    };
     ui.ctx().accesskit_node_builder(response.id, |node| {
         node.set_min_numeric_value(0.0);
         node.set_max_numeric_value(nights.saturating_sub(1) as f64);
@@ -332,7 +397,9 @@ fn told(
             if let Some(accesskit::ActionData::NumericValue(value)) = request.data
                 && value.is_finite()
             {
-                actions.push(Action::GoToDay(view.instant.plus_days(value.round() - night)));
+                actions.push(Action::GoToDay(
+                    view.instant.plus_days(value.round() - night),
+                ));
             }
         }
         actions

@@ -14,7 +14,13 @@ pub(super) enum Standing {
 }
 
 /// A word that acts when pressed. `name` is what a screen reader says; it begins with the word that is seen.
-pub(super) fn word(ui: &mut Ui, palette: &Palette, text: &str, name: &str, standing: Standing) -> Response {
+pub(super) fn word(
+    ui: &mut Ui,
+    palette: &Palette,
+    text: &str,
+    name: &str,
+    standing: Standing,
+) -> Response {
     let font = egui::TextStyle::Body.resolve(ui.style());
     word_sized(ui, palette, text, name, standing, font)
 }
@@ -27,14 +33,19 @@ pub(super) fn word_sized(
     standing: Standing,
     font: FontId,
 ) -> Response {
-    let galley = ui.painter().layout_no_wrap(text.to_owned(), font, Color32::PLACEHOLDER);
+    let galley = ui
+        .painter()
+        .layout_no_wrap(text.to_owned(), font, Color32::PLACEHOLDER);
     let pad = Vec2::new(3.0, 2.0);
     let (rect, response) = ui.allocate_exact_size(galley.size() + 2.0 * pad, Sense::click());
     response.widget_info(|| match standing {
         Standing::Command => WidgetInfo::labeled(egui::Role::Button, ui.is_enabled(), name),
-        Standing::Chosen | Standing::Open => {
-            WidgetInfo::selected(egui::Role::RadioButton, ui.is_enabled(), standing == Standing::Chosen, name)
-        }
+        Standing::Chosen | Standing::Open => WidgetInfo::selected(
+            egui::Role::RadioButton,
+            ui.is_enabled(),
+            standing == Standing::Chosen,
+            name,
+        ),
     });
     if ui.is_rect_visible(rect) {
         let of = |role: Role| colour(palette.colour(role));
@@ -47,7 +58,11 @@ pub(super) fn word_sized(
         ui.painter().galley(rect.min + pad, galley, ink);
         let line = |role: Role, width: f32| {
             let y = rect.bottom() - 1.0;
-            ui.painter().hline(rect.left() + pad.x..=rect.right() - pad.x, y, Stroke::new(width, of(role)));
+            ui.painter().hline(
+                rect.left() + pad.x..=rect.right() - pad.x,
+                y,
+                Stroke::new(width, of(role)),
+            );
         };
         if standing == Standing::Chosen {
             line(Role::Ink, 1.5);
@@ -56,7 +71,8 @@ pub(super) fn word_sized(
         }
         if response.has_focus() {
             let ring = Stroke::new(1.5, of(Role::Selection));
-            ui.painter().rect_stroke(rect, 2.0, ring, egui::StrokeKind::Outside);
+            ui.painter()
+                .rect_stroke(rect, 2.0, ring, egui::StrokeKind::Outside);
         }
     }
     if response.hovered() {
