@@ -12,7 +12,7 @@ use super::reading_words::Column;
 use super::readings_pane;
 use super::state::{Action, Effect, Panel, State};
 use super::strip_pane::{self, StripMade, StripPane};
-use super::theme::{MARGIN, TITLE, colour, dress, font, fonts, palette, theme_word};
+use super::theme::{MARGIN, TITLE, colour, dress, font, palette, prepare, theme_word};
 use super::time_words::{local_text, read_local, universal_text, zone_text};
 use super::timeline_pane::{self, NightsMade, TimelineMade, TimelinePane, TimelineWanted};
 use super::widgets::{Standing, caption, caution, word};
@@ -93,9 +93,7 @@ impl Window {
         path: Option<PathBuf>,
         now: Tt,
     ) -> std::io::Result<Self> {
-        ctx.set_fonts(fonts());
-        // Keys of ours change the size of text.
-        ctx.options_mut(|options| options.zoom_with_keyboard = false);
+        prepare(ctx);
         let of_worker = ctx.clone();
         let mut window = Window {
             state: State::new(scenario, path),
@@ -171,10 +169,10 @@ impl Window {
         }
     }
 
-    fn copy_readings(&mut self, ctx: &egui::Context) {
-        let Some((plan, column)) = self.state.plan.clone().zip(self.readings()) else {
-            return;
-        };
+    /// The readings as they are copied.
+    #[must_use]
+    pub fn readings_text(&self) -> Option<String> {
+        let plan = self.state.plan.as_ref()?;
         let clock = LocalClock {
             scenario: &plan.scenario,
             sky: &plan.sky,
@@ -186,8 +184,14 @@ impl Window {
             clock.long(instant),
             universal_text(plan.sky.tables(), instant)
         );
-        ctx.copy_text(column.text(&heading));
-        self.state.say("The readings are copied as text.");
+        Some(self.readings()?.text(&heading))
+    }
+
+    fn copy_readings(&mut self, ctx: &egui::Context) {
+        if let Some(text) = self.readings_text() {
+            ctx.copy_text(text);
+            self.state.say("The readings are copied as text.");
+        }
     }
 
     fn tonight_now(&self) -> Option<&Tonight> {
