@@ -608,9 +608,8 @@ impl<'e> Brush<'e> {
         }
     }
 
-    /// Cuts the polygon across the gradient, finely enough for colours to run evenly.
+    /// Cuts the polygon across the gradient at its stops: between them colours run evenly over a piece.
     fn shade_along(&mut self, polygon: &[Point], from: Point, to: Point, stops: &[Stop]) {
-        const PIECES: u32 = 6;
         let length = from.distance(to);
         if length == 0.0 || !length.is_finite() {
             return;
@@ -627,15 +626,7 @@ impl<'e> Brush<'e> {
         };
         let back = |point: Point| from.towards(across, point.x).towards(along, point.y);
         let ring: Vec<Point> = polygon.iter().map(turned).collect();
-        let mut cuts = Vec::new();
-        for pair in stops.windows(2) {
-            let &[a, b] = pair else { continue };
-            for piece in 0..=PIECES {
-                cuts.push(
-                    length * (a.part + (b.part - a.part) * f64::from(piece) / f64::from(PIECES)),
-                );
-            }
-        }
+        let cuts: Vec<f64> = stops.iter().map(|stop| length * stop.part).collect();
         let placement = self.easel.placement;
         for corners in trapezoids(&[ring], &cuts) {
             let vertices = corners.map(|corner| {
