@@ -609,9 +609,14 @@ impl Window {
             let weekday = clock
                 .date(view.instant)
                 .map_or("", |date| date.weekday().name());
-            caption(ui, weekday);
+            // Three letters in the room of the widest, so that nothing moves while days pass.
+            let room = 30.0 * scale;
+            let used = caption(ui, weekday.get(..3).unwrap_or(weekday))
+                .rect
+                .width();
+            ui.add_space((room - used).max(0.0));
             let shown = local_text(scenario, tables, view.instant);
-            let width = 128.0 * scale;
+            let width = 138.0 * scale;
             let typed = self.date_field.show(
                 ui,
                 colours,
@@ -655,7 +660,7 @@ impl Window {
             if word(ui, colours, "slower", "slower", Standing::Open).clicked() {
                 actions.push(Action::Speed(-1));
             }
-            caption(ui, &format!("{} steps a second", view.steps_a_second()));
+            caption(ui, &format!("{} a second", view.steps_a_second()));
             if word(ui, colours, "faster", "faster", Standing::Open).clicked() {
                 actions.push(Action::Speed(1));
             }
@@ -817,15 +822,15 @@ impl Window {
     }
 }
 
-/// Universal time as it is shown beside local time: the date only where it is another.
+/// Universal time as it is shown beside local time: month and day only where they are others.
 fn universal_words(local: &str, universal: &str) -> String {
     let (date, time) = universal.split_once('T').unwrap_or(("", universal));
     let time = time.replace('Z', " UTC");
     if local.starts_with(date) {
-        time
-    } else {
-        format!("{date} {time}")
+        return time;
     }
+    let (_, month_and_day) = date.split_at(date.len().saturating_sub("07-01".len()));
+    format!("{month_and_day} {time}")
 }
 
 /// Who looks at what in a plan.
