@@ -101,7 +101,7 @@ fn stage() -> Stage {
     };
     let scenario = &made.plan.scenario;
     let ctx = egui::Context::default();
-    ctx.set_fonts(loopwright::window::theme::fonts());
+    loopwright::window::theme::prepare(&ctx);
     Stage {
         picture: Picture::new(&made.scene, easel.clone(), Level::of_strip),
         outline: Outline::new(scenario.skyline.polygon(), &scenario.site.air),

@@ -96,11 +96,11 @@ fn assert_shows_elongation(harness: &Harness<'_, Window>) {
 fn the_season_opens_with_its_three_views() {
     let harness = harness();
     assert_shows_elongation(&harness);
-    harness.get_by_label_contains("strip, ");
+    harness.get_by_label_contains("strip at ");
     let timeline = harness.get_by_label("timeline, night of the season");
     assert!(timeline.accesskit_node().value().unwrap().contains("2027"));
     // More than half of the window.
-    let strip = harness.get_by_label_contains("strip, ").rect();
+    let strip = harness.get_by_label_contains("strip at ").rect();
     assert!(strip.area() > SIZE.x * SIZE.y / 2.0, "{strip:?}");
 }
 
@@ -254,18 +254,20 @@ fn everything_can_be_done_with_the_keyboard() {
 fn the_step_is_typed_and_told_when_wrong() {
     let mut harness = harness();
     let before = instant(&harness);
-    harness.get_by_label("step").focus();
+    harness.get_by_label("length of a step").focus();
     settle(&mut harness);
     harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
-    harness.get_by_label("step").type_text("10 min");
+    harness.get_by_label("length of a step").type_text("10 min");
     press(&mut harness, Key::Enter);
     click(&mut harness, "on by a step");
     assert!(((instant(&harness).days() - before.days()) * 1_440.0 - 10.0).abs() < 1e-6);
 
-    harness.get_by_label("step").focus();
+    harness.get_by_label("length of a step").focus();
     settle(&mut harness);
     harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
-    harness.get_by_label("step").type_text("a while");
+    harness
+        .get_by_label("length of a step")
+        .type_text("a while");
     press(&mut harness, Key::Enter);
     harness.get_by_label_contains("a while");
     click(&mut harness, "on by a step");
@@ -280,10 +282,10 @@ fn a_press_on_the_path_goes_to_that_day() {
     let mut harness = harness();
     let made = harness.state().strip().unwrap().clone();
     let season = &made.plan.season;
-    let sample = &season.track.points[40];
+    let sample = &season.track.points[43];
     let row = made.layout.rows[0];
     let point = row.point_of(season.frame.ecliptic_from_icrs * sample.direction);
-    let rect = harness.get_by_label_contains("strip, ").rect();
+    let rect = harness.get_by_label_contains("strip at ").rect();
     let scale = f64::from(rect.width()) / made.view.width;
     let pos = rect.min + egui::vec2((point.x * scale) as f32, (point.y * scale) as f32);
     harness.hover_at(pos);
@@ -410,14 +412,9 @@ fn a_missing_file_is_told_in_the_window() {
 #[test]
 fn the_readings_are_copied_as_text() {
     let mut harness = harness();
-    harness.key_press(Key::C);
-    harness.step();
-    let commands = harness.output().platform_output.commands.clone();
-    let text = commands.iter().find_map(|command| match command {
-        egui::OutputCommand::CopyText(text) => Some(text.clone()),
-        _ => None,
-    });
-    let text = text.unwrap();
+    press(&mut harness, Key::C);
+    harness.get_by_label("The readings are copied as text.");
+    let text = harness.state().readings_text().unwrap();
     let plan = harness.state().state().plan.clone().unwrap();
     assert!(text.starts_with(&plan.scenario.site.name), "{text}");
     assert!(

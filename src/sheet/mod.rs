@@ -13,7 +13,7 @@ mod timeline_words;
 pub mod words;
 
 pub use brief::brief;
-pub use png::{PngError, png};
+pub use png::{Pixels, PngError, pixels, png};
 pub use season_sheet::{SeasonSheet, SheetError, printed_strip, season_sheet};
 pub use strip_words::{east_is_left, printed_view, strip_text};
 pub use svg::svg;

@@ -27,6 +27,39 @@ pub const LARGEST_SIDE: u32 = 16_384;
 /// # Errors
 /// When the picture would be empty or too large, or cannot be encoded.
 pub fn png(scene: &Scene, palette: &Palette, scale: f64) -> Result<Vec<u8>, PngError> {
+    pixmap(scene, palette, scale)?
+        .encode_png()
+        .map_err(|error| PngError::Encode(error.to_string()))
+}
+
+/// A picture as rows of red, green, blue, each a byte, from the upper left corner; nothing shines through it.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Pixels {
+    pub width: usize,
+    pub height: usize,
+    pub rgb: Vec<u8>,
+}
+
+/// The same picture as plain bytes.
+///
+/// # Errors
+/// When the picture would be empty or too large.
+pub fn pixels(scene: &Scene, palette: &Palette, scale: f64) -> Result<Pixels, PngError> {
+    let drawn = pixmap(scene, palette, scale)?;
+    // The ground covers all of it, so that no pixel is premultiplied by anything but 1.
+    let rgb = drawn
+        .pixels()
+        .iter()
+        .flat_map(|pixel| [pixel.red(), pixel.green(), pixel.blue()])
+        .collect();
+    Ok(Pixels {
+        width: drawn.width() as usize,
+        height: drawn.height() as usize,
+        rgb,
+    })
+}
+
+fn pixmap(scene: &Scene, palette: &Palette, scale: f64) -> Result<Pixmap, PngError> {
     let (width, height) = (
         (scene.width * scale).round(),
         (scene.height * scale).round(),
@@ -52,10 +85,7 @@ pub fn png(scene: &Scene, palette: &Palette, scale: f64) -> Result<Vec<u8>, PngE
     for mark in &scene.marks {
         canvas.shape(&mark.shape);
     }
-    canvas
-        .pixels
-        .encode_png()
-        .map_err(|error| PngError::Encode(error.to_string()))
+    Ok(canvas.pixels)
 }
 
 struct Canvas<'a> {

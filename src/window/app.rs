@@ -12,9 +12,9 @@ use super::reading_words::Column;
 use super::readings_pane;
 use super::state::{Action, Effect, Panel, State};
 use super::strip_pane::{self, StripMade, StripPane};
-use super::theme::{MARGIN, TITLE, colour, dress, font, fonts, palette, theme_word};
+use super::theme::{MARGIN, TITLE, colour, dress, font, palette, prepare, theme_word};
 use super::time_words::{local_text, read_local, universal_text, zone_text};
-use super::timeline_pane::{self, NightsMade, TimelinePane};
+use super::timeline_pane::{self, NightsMade, TimelineMade, TimelinePane, TimelineWanted};
 use super::widgets::{Standing, caption, caution, word};
 use crate::chart::{
     Font, Outline, OverlayStyle, Palette, Rect, Role, Scene, StripView, note_boxes, skyline_overlay,
@@ -39,6 +39,7 @@ pub enum Done {
     Tonight(Arc<Plan>, Result<Tonight, SkyError>),
     Strip(Box<StripMade>),
     Nights(Result<Box<NightsMade>, SkyError>),
+    Timeline(Box<TimelineMade>),
 }
 
 /// A moment with what it was worked out from.
@@ -70,6 +71,7 @@ pub struct Window {
     asked_plan: Option<Arc<Scenario>>,
     asked_strip: Option<(Arc<Plan>, StripView)>,
     asked_nights: Option<Arc<Plan>>,
+    asked_timeline: Option<(Arc<NightsMade>, TimelineWanted)>,
     asked_tonight: Option<(Arc<Plan>, Tt)>,
     date_field: Field,
     step_field: Field,
@@ -91,9 +93,7 @@ impl Window {
         path: Option<PathBuf>,
         now: Tt,
     ) -> std::io::Result<Self> {
-        ctx.set_fonts(fonts());
-        // Keys of ours change the size of text.
-        ctx.options_mut(|options| options.zoom_with_keyboard = false);
+        prepare(ctx);
         let of_worker = ctx.clone();
         let mut window = Window {
             state: State::new(scenario, path),
@@ -107,6 +107,7 @@ impl Window {
             asked_plan: None,
             asked_strip: None,
             asked_nights: None,
+            asked_timeline: None,
             asked_tonight: None,
             date_field: Field::default(),
             step_field: Field::default(),
@@ -148,9 +149,7 @@ impl Window {
     /// Whether something on screen waits for the worker.
     #[must_use]
     pub fn is_working(&self) -> bool {
-        [Kind::Plan, Kind::Tonight, Kind::Strip, Kind::Nights]
-            .into_iter()
-            .any(|kind| self.worker.is_busy(kind))
+        Kind::ALL.into_iter().any(|kind| self.worker.is_busy(kind))
     }
 
     /// Waits until nothing is under way any more.
@@ -170,10 +169,10 @@ impl Window {
         }
     }
 
-    fn copy_readings(&mut self, ctx: &egui::Context) {
-        let Some((plan, column)) = self.state.plan.clone().zip(self.readings()) else {
-            return;
-        };
+    /// The readings as they are copied.
+    #[must_use]
+    pub fn readings_text(&self) -> Option<String> {
+        let plan = self.state.plan.as_ref()?;
         let clock = LocalClock {
             scenario: &plan.scenario,
             sky: &plan.sky,
@@ -185,8 +184,14 @@ impl Window {
             clock.long(instant),
             universal_text(plan.sky.tables(), instant)
         );
-        ctx.copy_text(column.text(&heading));
-        self.state.say("The readings are copied as text.");
+        Some(self.readings()?.text(&heading))
+    }
+
+    fn copy_readings(&mut self, ctx: &egui::Context) {
+        if let Some(text) = self.readings_text() {
+            ctx.copy_text(text);
+            self.state.say("The readings are copied as text.");
+        }
     }
 
     fn tonight_now(&self) -> Option<&Tonight> {
@@ -230,7 +235,8 @@ impl Window {
                 }
             }
             Done::Tonight(plan, Ok(tonight)) => self.tonight = Some((plan, tonight)),
-            Done::Nights(Ok(nights)) => self.timeline.take(*nights),
+            Done::Nights(Ok(nights)) => self.timeline.take_nights(*nights),
+            Done::Timeline(made) => self.timeline.take(*made),
             Done::Strip(made) => self.strip.take(*made),
             Done::Tonight(_, Err(error)) | Done::Nights(Err(error)) => {
                 self.state.complain(error.to_string())
@@ -279,6 +285,23 @@ impl Window {
             self.worker.ask(Kind::Nights, move || {
                 Done::Nights(NightsMade::new(plan).map(Box::new))
             });
+        }
+        if let Some((nights, wanted)) = self
+            .timeline
+            .nights()
+            .cloned()
+            .zip(self.timeline.wanted.clone())
+        {
+            let is_asked = self
+                .asked_timeline
+                .as_ref()
+                .is_some_and(|(of, asked)| Arc::ptr_eq(of, &nights) && *asked == wanted);
+            if !is_asked {
+                self.asked_timeline = Some((Arc::clone(&nights), wanted.clone()));
+                self.worker.ask(Kind::Timeline, move || {
+                    Done::Timeline(Box::new(TimelineMade::new(nights, wanted)))
+                });
+            }
         }
         self.moment_of(&plan);
         let instant = self.state.view.instant;
@@ -586,9 +609,14 @@ impl Window {
             let weekday = clock
                 .date(view.instant)
                 .map_or("", |date| date.weekday().name());
-            caption(ui, weekday);
+            // Three letters in the room of the widest, so that nothing moves while days pass.
+            let room = 30.0 * scale;
+            let used = caption(ui, weekday.get(..3).unwrap_or(weekday))
+                .rect
+                .width();
+            ui.add_space((room - used).max(0.0));
             let shown = local_text(scenario, tables, view.instant);
-            let width = 128.0 * scale;
+            let width = 138.0 * scale;
             let typed = self.date_field.show(
                 ui,
                 colours,
@@ -606,11 +634,14 @@ impl Window {
             ui.add_space(10.0 * scale);
             caption(ui, "step");
             let width = 62.0 * scale;
-            let typed =
-                self.step_field
-                    .show(ui, colours, "step", width, &view.step.to_string(), |text| {
-                        text.parse::<Step>().map_err(|error| error.to_string())
-                    });
+            let typed = self.step_field.show(
+                ui,
+                colours,
+                "length of a step",
+                width,
+                &view.step.to_string(),
+                |text| text.parse::<Step>().map_err(|error| error.to_string()),
+            );
             actions.extend(typed.map(Action::SetStep));
             if word(ui, colours, "back", "back by a step", Standing::Command).clicked() {
                 actions.push(Action::Step(-1));
@@ -629,7 +660,7 @@ impl Window {
             if word(ui, colours, "slower", "slower", Standing::Open).clicked() {
                 actions.push(Action::Speed(-1));
             }
-            caption(ui, &format!("{} steps a second", view.steps_a_second()));
+            caption(ui, &format!("{} a second", view.steps_a_second()));
             if word(ui, colours, "faster", "faster", Standing::Open).clicked() {
                 actions.push(Action::Speed(1));
             }
@@ -784,22 +815,22 @@ impl Window {
                 )
             });
         format!(
-            "strip, {}: {}{place}",
+            "strip at {}: {}{place}",
             clock.long(self.state.view.instant),
             plan.season.subject
         )
     }
 }
 
-/// Universal time as it is shown beside local time: the date only where it is another.
+/// Universal time as it is shown beside local time: month and day only where they are others.
 fn universal_words(local: &str, universal: &str) -> String {
     let (date, time) = universal.split_once('T').unwrap_or(("", universal));
     let time = time.replace('Z', " UTC");
     if local.starts_with(date) {
-        time
-    } else {
-        format!("{date} {time}")
+        return time;
     }
+    let (_, month_and_day) = date.split_at(date.len().saturating_sub("07-01".len()));
+    format!("{month_and_day} {time}")
 }
 
 /// Who looks at what in a plan.

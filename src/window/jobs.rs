@@ -15,11 +15,18 @@ pub enum Kind {
     Strip,
     /// The light of every night.
     Nights,
+    Timeline,
 }
 
 impl Kind {
-    const COUNT: usize = 4;
-    const ORDER: [Kind; Kind::COUNT] = [Kind::Plan, Kind::Tonight, Kind::Strip, Kind::Nights];
+    const COUNT: usize = 5;
+    pub const ALL: [Kind; Kind::COUNT] = [
+        Kind::Plan,
+        Kind::Tonight,
+        Kind::Strip,
+        Kind::Nights,
+        Kind::Timeline,
+    ];
 }
 
 type Job<T> = Box<dyn FnOnce() -> T + Send>;
@@ -150,7 +157,7 @@ fn work<T>(shared: &Shared<T>, done: &Sender<(Kind, T)>, wake: impl Fn()) {
             if desk.closed {
                 return;
             }
-            let next = Kind::ORDER
+            let next = Kind::ALL
                 .into_iter()
                 .find_map(|kind| Some((kind, desk.waiting.get_mut(kind as usize)?.take()?)));
             match next {

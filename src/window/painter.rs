@@ -441,18 +441,15 @@ impl<'e> Brush<'e> {
     fn ribbon(&mut self, points: &[RibbonPoint]) {
         let placement = self.easel.placement;
         let mut across: Option<[u32; 4]> = None;
-        let last = points.len().saturating_sub(1);
-        for (index, point) in points.iter().enumerate() {
+        let kept = self.kept(points);
+        let last = kept.len().saturating_sub(1);
+        for (index, point) in kept.iter().enumerate() {
             let (Some(before), Some(after)) = (
-                points.get(index.saturating_sub(1)),
-                points.get((index + 1).min(last)),
+                kept.get(index.saturating_sub(1)),
+                kept.get((index + 1).min(last)),
             ) else {
                 continue;
             };
-            if !point.at.is_finite() {
-                across = None;
-                continue;
-            }
             let normal = after.at.minus(before.at).unit().turned();
             let (x, y) = placement.at_f64(point.at);
             // Thinner than a pixel it is drawn a pixel wide and fainter.
@@ -470,13 +467,46 @@ impl<'e> Brush<'e> {
                 self.vertex(x - normal.x * out, y - normal.y * out, Color32::TRANSPARENT),
             ];
             if let Some(from) = across {
-                for (a, b, c, d) in [(0, 1, 0, 1), (1, 2, 1, 2), (2, 3, 2, 3)] {
-                    self.mesh.add_triangle(from[a], from[b], row[c]);
-                    self.mesh.add_triangle(from[b], row[c], row[d]);
+                for side in 0..3 {
+                    self.mesh
+                        .add_triangle(from[side], from[side + 1], row[side]);
+                    self.mesh
+                        .add_triangle(from[side + 1], row[side], row[side + 1]);
                 }
             }
             across = Some(row);
         }
+    }
+
+    /// The points of a ribbon that are needed to see its course: those a few pixels apart, and those where it bends or
+    /// changes its paint. Without points that are no numbers.
+    fn kept<'p>(&self, points: &'p [RibbonPoint]) -> Vec<&'p RibbonPoint> {
+        /// Nearer ones may be left out, screen points.
+        const APART: f64 = 2.5;
+        /// Cosine of a bend of 5 degrees, which must be kept.
+        const STRAIGHT: f64 = 0.996;
+        let mut kept: Vec<&RibbonPoint> = Vec::with_capacity(points.len());
+        let mut along: Option<Point> = None;
+        for (index, point) in points.iter().enumerate() {
+            if !point.at.is_finite() {
+                continue;
+            }
+            let Some(last) = kept.last() else {
+                kept.push(point);
+                continue;
+            };
+            let step = point.at.minus(last.at);
+            let way = step.unit();
+            let is_near = step.length() * self.easel.placement.scale < APART;
+            let is_straight = along.is_none_or(|along| along.dot(way) > STRAIGHT);
+            let is_same = point.paint.role == last.paint.role;
+            if is_near && is_straight && is_same && index + 1 != points.len() {
+                continue;
+            }
+            along = Some(way);
+            kept.push(point);
+        }
+        kept
     }
 
     /// A dot: its middle, a ring on its edge and one a feather outside. The least ones are cones of light as strong as the
@@ -499,10 +529,11 @@ impl<'e> Brush<'e> {
         } else {
             ink
         };
+        // As few corners as still look round: stars are many.
         let corners = if small {
-            7
+            5
         } else {
-            (6.0 + 2.6 * radius).clamp(9.0, 48.0) as u32
+            (5.0 + 2.0 * radius).clamp(7.0, 48.0) as u32
         };
         let middle = self.vertex(x, y, ink);
         let first = self.mesh.vertices.len() as u32;
@@ -577,9 +608,8 @@ impl<'e> Brush<'e> {
         }
     }
 
-    /// Cuts the polygon across the gradient, finely enough for colours to run evenly.
+    /// Cuts the polygon across the gradient at its stops: between them colours run evenly over a piece.
     fn shade_along(&mut self, polygon: &[Point], from: Point, to: Point, stops: &[Stop]) {
-        const PIECES: u32 = 6;
         let length = from.distance(to);
         if length == 0.0 || !length.is_finite() {
             return;
@@ -596,15 +626,7 @@ impl<'e> Brush<'e> {
         };
         let back = |point: Point| from.towards(across, point.x).towards(along, point.y);
         let ring: Vec<Point> = polygon.iter().map(turned).collect();
-        let mut cuts = Vec::new();
-        for pair in stops.windows(2) {
-            let &[a, b] = pair else { continue };
-            for piece in 0..=PIECES {
-                cuts.push(
-                    length * (a.part + (b.part - a.part) * f64::from(piece) / f64::from(PIECES)),
-                );
-            }
-        }
+        let cuts: Vec<f64> = stops.iter().map(|stop| length * stop.part).collect();
         let placement = self.easel.placement;
         for corners in trapezoids(&[ring], &cuts) {
             let vertices = corners.map(|corner| {

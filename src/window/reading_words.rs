@@ -39,7 +39,9 @@ pub struct Row {
 #[derive(Clone, Debug, PartialEq)]
 pub struct Column {
     pub subject: &'static str,
-    /// Sentences, the Sun's first.
+    /// The caution above all others: the Sun is up and near.
+    pub sun_caution: Option<&'static str>,
+    /// Further sentences.
     pub cautions: Vec<String>,
     /// Elongation, distance, magnitude.
     pub large: Vec<Line>,
@@ -48,6 +50,9 @@ pub struct Column {
     /// Sun and Moon as the sky's light.
     pub sky: Vec<Line>,
 }
+
+/// What to do while the Sun is up and near.
+const SUN_CAUTION: &str = "The Sun is up and near. Never point optics or eyes there: wait until the whole disc has set beyond the true horizon (hidden by a roof is not set), and stop before it rises.";
 
 /// A number with a true minus sign, and a plus where signs tell.
 #[must_use]
@@ -158,6 +163,10 @@ impl Column {
             .collect();
         Some(Column {
             subject: subject.body.name(),
+            sun_caution: subject
+                .cautions
+                .contains(Caution::SunNear)
+                .then_some(SUN_CAUTION),
             cautions: cautions(plan, moment, subject),
             large: large(subject),
             small: small(plan, subject, moment, tonight),
@@ -170,7 +179,11 @@ impl Column {
     #[must_use]
     pub fn text(&self, heading: &str) -> String {
         let mut text = format!("{heading}\n{}\n", self.subject);
-        for caution in &self.cautions {
+        for caution in self
+            .sun_caution
+            .into_iter()
+            .chain(self.cautions.iter().map(String::as_str))
+        {
             text.push_str(&format!("CAUTION: {caution}\n"));
         }
         for line in self.large.iter().chain(&self.small).chain(&self.sky) {
@@ -216,11 +229,6 @@ const fn side(side: crate::sky::place::Side) -> &'static str {
 
 fn cautions(plan: &Plan, moment: &Moment, subject: &Readings) -> Vec<String> {
     let mut sentences = Vec::new();
-    if subject.cautions.contains(Caution::SunNear) {
-        sentences.push(String::from(
-            "The Sun is up and near. Never point optics or eyes there: wait until the whole disc has set beyond the true horizon (hidden by a roof is not set), and stop before it rises.",
-        ));
-    }
     let rest: Cautions = subject.cautions.and(moment.cautions);
     for caution in rest.iter().filter(|caution| *caution != Caution::SunNear) {
         let mut sentence = super::capitalised(caution.sentence());

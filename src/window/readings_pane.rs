@@ -38,9 +38,14 @@ pub fn show(ui: &mut Ui, column: &Column, palette: &Palette, text_scale: f32) ->
             }
         });
     });
-    for sentence in &column.cautions {
+    if let Some(sentence) = column.sun_caution {
         ui.add_space(4.0 * text_scale);
         caution(ui, palette, sentence);
+    }
+    for sentence in &column.cautions {
+        ui.add_space(2.0 * text_scale);
+        let words = egui::RichText::new(sentence).small().color(ink.caution);
+        ui.add(egui::Label::new(words).wrap());
     }
     ui.add_space(2.0 * text_scale);
     for line in &column.large {
@@ -69,6 +74,7 @@ pub fn show(ui: &mut Ui, column: &Column, palette: &Palette, text_scale: f32) ->
 struct Inks {
     ink: Color32,
     faint: Color32,
+    caution: Color32,
 }
 
 impl Inks {
@@ -76,6 +82,7 @@ impl Inks {
         Inks {
             ink: colour(palette.colour(Role::Ink)),
             faint: colour(palette.colour(Role::FaintInk)),
+            caution: colour(palette.colour(Role::Caution)),
         }
     }
 }

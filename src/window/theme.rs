@@ -62,7 +62,7 @@ pub fn font(font: Font, size: f32) -> FontId {
 
 /// The shipped fonts, each falling back on the others as text in charts does, and on egui's own for what a user may type.
 #[must_use]
-pub fn fonts() -> FontDefinitions {
+fn fonts() -> FontDefinitions {
     let mut fonts = FontDefinitions::default();
     let others = fonts
         .families
@@ -87,6 +87,17 @@ pub fn fonts() -> FontDefinitions {
         fonts.families.insert(family(font), chain);
     }
     fonts
+}
+
+/// Sets up a context once: fonts, and what egui would otherwise do that this window does itself.
+pub fn prepare(ctx: &egui::Context) {
+    ctx.set_fonts(fonts());
+    ctx.options_mut(|options| {
+        // Keys of the window's own change the size of text.
+        options.zoom_with_keyboard = false;
+        // Pictures are culled when they are made.
+        options.tessellation_options.coarse_tessellation_culling = false;
+    });
 }
 
 /// Gives egui's own widgets the colours of a palette and text of a size.

@@ -1,21 +1,25 @@
 //! The timeline: the nights of the season under the strip, with the moment on it. Drag to scrub, wheel to zoom.
+//!
+//! Its tones are thousands of corners that stay where they are for as long as the season does: the worker draws them
+//! once, as they are drawn for print, and the window shows that as one image with its words over it.
 
 use std::sync::Arc;
 
 use egui::accesskit;
+use egui::emath::GuiRounding as _;
 use egui::{Sense, Ui, Vec2, WidgetInfo};
 
 use super::painter::{Easel, Picture, Placement, Shift};
 use super::state::{Action, View};
 use super::strip_pane::{SHEET_SCALE, focus_ring};
 use crate::chart::{
-    Level, MarkId, Palette, Timeline, TimelineLayout, TimelineText, TimelineView, timeline,
-    timeline_cursor,
+    Level, Mark, MarkId, Palette, Scene, Shape, Timeline, TimelineLayout, TimelineText,
+    TimelineView, timeline, timeline_cursor,
 };
 use crate::scenario::Plan;
 use crate::season::darkness::{Darkness, Place, darkness};
-use crate::sheet::timeline_text;
 use crate::sheet::words::LocalClock;
+use crate::sheet::{Pixels, PngError, pixels, timeline_text};
 use crate::sky::Tt;
 use crate::sky::place::SkyError;
 
@@ -55,26 +59,78 @@ enum Drag {
     Hours,
 }
 
+/// What a timeline is drawn for.
+#[derive(Clone, Debug, PartialEq)]
+pub struct TimelineWanted {
+    pub view: TimelineView,
+    pub palette: Palette,
+    pub pixels_per_point: f32,
+}
+
+/// A timeline as it was drawn, with what it was drawn from.
+pub struct TimelineMade {
+    nights: Arc<NightsMade>,
+    wanted: TimelineWanted,
+    timeline: Timeline,
+    image: Result<Pixels, PngError>,
+}
+
+impl TimelineMade {
+    /// Draws a timeline: tens of milliseconds.
+    #[must_use]
+    pub fn new(nights: Arc<NightsMade>, wanted: TimelineWanted) -> Self {
+        let timeline = timeline(
+            &nights.plan.season,
+            &nights.darkness,
+            &nights.text,
+            &wanted.view,
+        );
+        let mut tones = timeline.scene.clone();
+        tones.marks.retain(|mark| !is_written(mark));
+        let image = pixels(&tones, &wanted.palette, f64::from(wanted.pixels_per_point));
+        TimelineMade {
+            nights,
+            wanted,
+            timeline,
+            image,
+        }
+    }
+}
+
+/// What is drawn over the image: words, in the letters of the window.
+const fn is_written(mark: &Mark) -> bool {
+    matches!(mark.shape, Shape::Label(_))
+}
+
 /// What the pane keeps between frames.
 #[derive(Default)]
 pub struct TimelinePane {
     nights: Option<Arc<NightsMade>>,
-    drawn: Option<Drawn>,
+    made: Option<TimelineMade>,
+    shown: Option<Shown>,
     drag: Option<Drag>,
+    /// What the pane shows, as it should be drawn.
+    pub wanted: Option<TimelineWanted>,
     /// What lies under the pointer, in words.
     pub hover: Option<String>,
 }
 
-struct Drawn {
-    nights: Arc<NightsMade>,
-    view: TimelineView,
-    timeline: Timeline,
-    picture: Picture,
+/// The image on the graphics card and the words over it.
+struct Shown {
+    texture: egui::TextureHandle,
+    size: Vec2,
+    words: Scene,
+    picture: Option<Picture>,
 }
 
 impl TimelinePane {
-    pub fn take(&mut self, nights: NightsMade) {
+    pub fn take_nights(&mut self, nights: NightsMade) {
         self.nights = Some(Arc::new(nights));
+    }
+
+    pub fn take(&mut self, made: TimelineMade) {
+        self.made = Some(made);
+        self.shown = None;
     }
 
     /// The nights on screen.
@@ -83,12 +139,21 @@ impl TimelinePane {
         self.nights.as_ref()
     }
 
-    /// Whether the nights are those of this plan.
-    #[must_use]
-    pub fn is_current(&self, plan: &Arc<Plan>) -> bool {
-        self.nights
-            .as_ref()
-            .is_some_and(|nights| Arc::ptr_eq(&nights.plan, plan))
+    /// Puts what was drawn on the graphics card.
+    fn load(&mut self, ctx: &egui::Context) {
+        let Some(made) = self.made.as_ref().filter(|_| self.shown.is_none()) else {
+            return;
+        };
+        let Ok(image) = &made.image else { return };
+        let colours = egui::ColorImage::from_rgb([image.width, image.height], &image.rgb);
+        let mut words = made.timeline.scene.clone();
+        words.marks.retain(is_written);
+        self.shown = Some(Shown {
+            texture: ctx.load_texture("timeline", colours, egui::TextureOptions::LINEAR),
+            size: Vec2::new(image.width as f32, image.height as f32) / made.wanted.pixels_per_point,
+            words,
+            picture: None,
+        });
     }
 }
 
@@ -115,50 +180,59 @@ pub fn show(
         });
         return actions;
     };
-    let wanted = TimelineView {
-        width: f64::from(rect.width()),
-        height: f64::from(rect.height()),
-        text_scale: SHEET_SCALE * f64::from(text_scale),
-        window: view.nights,
-    };
-    let easel = Easel {
-        placement: Placement {
-            left: f64::from(rect.left()),
-            top: f64::from(rect.top()),
-            scale: 1.0,
+    let wanted = TimelineWanted {
+        view: TimelineView {
+            width: f64::from(rect.width()),
+            height: f64::from(rect.height()),
+            text_scale: SHEET_SCALE * f64::from(text_scale),
+            window: view.nights,
         },
         palette: *palette,
         pixels_per_point: ui.ctx().pixels_per_point(),
+    };
+    // Image and letters both stand on whole pixels.
+    let corner = rect.min.round_to_pixels(wanted.pixels_per_point);
+    let easel = Easel {
+        placement: Placement {
+            left: f64::from(corner.x),
+            top: f64::from(corner.y),
+            scale: 1.0,
+        },
+        palette: *palette,
+        pixels_per_point: wanted.pixels_per_point,
         clip: rect,
     };
-    let fits = pane.drawn.as_ref().is_some_and(|drawn| {
-        Arc::ptr_eq(&drawn.nights, &nights)
-            && drawn.view == wanted
-            && *drawn.picture.easel() == easel
-    });
-    if !fits {
-        let made = timeline(&plan.season, &nights.darkness, &nights.text, &wanted);
-        let picture = Picture::new(&made.scene, easel.clone(), |_| Level::Paper);
-        pane.drawn = Some(Drawn {
-            nights: Arc::clone(&nights),
-            view: wanted,
-            timeline: made,
-            picture,
-        });
+    pane.wanted = Some(wanted.clone());
+    pane.load(ui.ctx());
+    if let Some(shown) = &mut pane.shown
+        && ui.is_rect_visible(rect)
+    {
+        let image = egui::Rect::from_min_size(corner, shown.size);
+        let whole = egui::Rect::from_min_max(egui::Pos2::ZERO, egui::pos2(1.0, 1.0));
+        ui.painter()
+            .image(shown.texture.id(), image, whole, egui::Color32::WHITE);
+        let words = match shown.picture.take() {
+            Some(picture) if *picture.easel() == easel => picture,
+            _ => Picture::new(&shown.words, easel.clone(), |_| Level::Paper),
+        };
+        words.show(ui.painter(), Shift::NONE, &[], None);
+        shown.picture = Some(words);
     }
-    let Some(drawn) = &pane.drawn else {
+    let Some(made) = &pane.made else {
         return actions;
     };
-    let layout = &drawn.timeline.layout;
+    // While the image is behind, what is pointed at is already what will be seen.
+    let next = (made.wanted.view != wanted.view || !Arc::ptr_eq(&made.nights, &nights))
+        .then(|| TimelineLayout::new(&nights.darkness, &nights.text, &wanted.view));
+    let layout = next.as_ref().unwrap_or(&made.timeline.layout);
     if ui.is_rect_visible(rect) {
-        let cursor = Picture::new(
-            &timeline_cursor(layout, &wanted, view.instant),
-            easel.clone(),
-            |_| Level::Over,
+        let cursor = timeline_cursor(layout, &wanted.view, view.instant);
+        Picture::new(&cursor, easel.clone(), |_| Level::Over).show(
+            ui.painter(),
+            Shift::NONE,
+            &[],
+            None,
         );
-        drawn
-            .picture
-            .show(ui.painter(), Shift::NONE, &[], Some(&cursor));
     }
     actions.extend(told(
         ui,
@@ -192,7 +266,7 @@ pub fn show(
     }
     if let Some(pos) = response.hover_pos() {
         let point = placement.point(pos);
-        pane.hover = under(plan, &drawn.timeline, point);
+        pane.hover = under(plan, &made.timeline.scene, layout, point);
         actions.extend(wheel(ui, layout, nights.darkness.nights.len(), point.x));
     }
     if response.has_focus() {
@@ -242,13 +316,18 @@ fn scrubbed(
 }
 
 /// The words for what lies under the pointer: an event near its mark, else the night and the hour.
-fn under(plan: &Plan, timeline: &Timeline, point: crate::chart::Point) -> Option<String> {
+fn under(
+    plan: &Plan,
+    scene: &Scene,
+    layout: &TimelineLayout,
+    point: crate::chart::Point,
+) -> Option<String> {
     const REACH: f64 = 5.0;
     let clock = LocalClock {
         scenario: &plan.scenario,
         sky: &plan.sky,
     };
-    for hit in timeline.scene.hit(point, REACH) {
+    for hit in scene.hit(point, REACH) {
         if let MarkId::Event(index) = hit.id {
             let event = plan.season.events.get(index)?;
             return Some(format!(
@@ -258,13 +337,10 @@ fn under(plan: &Plan, timeline: &Timeline, point: crate::chart::Point) -> Option
             ));
         }
     }
-    if !timeline.layout.plot.contains(point) {
+    if !layout.plot.contains(point) {
         return None;
     }
-    timeline
-        .layout
-        .instant_at(point)
-        .map(|instant| clock.long(instant))
+    layout.instant_at(point).map(|instant| clock.long(instant))
 }
 
 fn wheel(ui: &Ui, layout: &TimelineLayout, nights: usize, x: f64) -> Option<Action> {
