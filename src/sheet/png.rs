@@ -10,7 +10,7 @@ use crate::chart::{self, Label, Paint, Palette, Point, Role, Run, Scene, Shape, 
 /// Why a picture could not be made.
 #[derive(Debug, thiserror::Error)]
 pub enum PngError {
-    /// The picture would be empty, or larger than [`LARGEST_SIDE`].
+    /// The picture would be empty, or larger than 16 384 pixels on a side.
     #[error(
         "a picture of {width:.0} x {height:.0} pixels cannot be made: each side must have 1 to {LARGEST_SIDE} pixels; choose another scale"
     )]
