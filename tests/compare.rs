@@ -532,6 +532,36 @@ fn the_command_compares_places_and_ranks() {
     assert!(rows[0]["rank"].is_null());
 }
 
+/// Long spans are worked through in pieces; no opposition is lost or doubled where they join. Mars is in opposition 17 times
+/// in 36 years (synodic period 779.94 days).
+#[test]
+fn a_long_span_has_every_opposition_once() {
+    let (status, text, errors) = run(&[
+        "seasons",
+        "--subject",
+        "mars",
+        "--from",
+        "2000",
+        "--to",
+        "2036",
+        "--site",
+        "50,10",
+    ]);
+    assert_eq!(status, Some(0), "{errors}");
+    let mut reader = csv::Reader::from_reader(text.as_bytes());
+    let header = reader.headers().unwrap().clone();
+    let column = header
+        .iter()
+        .position(|name| name == "opposition_utc")
+        .unwrap();
+    let dates: Vec<String> = reader
+        .records()
+        .map(|row| row.unwrap()[column].to_owned())
+        .collect();
+    assert_eq!(dates.len(), 17);
+    assert!(dates.windows(2).all(|pair| pair[0] < pair[1]), "{dates:?}");
+}
+
 #[test]
 fn wrong_words_are_explained() {
     let mars = ["seasons", "--subject", "mars", "--from", "2026", "--to"];

@@ -17,6 +17,7 @@ use crate::sheet::table::{Cell, TableWriter};
 use crate::sky::place::Sky;
 use crate::sky::{Body, Site, Skyline};
 
+use super::progress::Progress;
 use super::words::{InstantWord, SiteWord, site_clock};
 use super::{CliError, Format};
 
@@ -185,10 +186,16 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     let mut measures: Vec<Measures> = Vec::new();
     // A row waits for its rank.
     type Row<'a> = Box<dyn Fn(Option<&Ranked>) -> Vec<Cell> + 'a>;
-    let (outer, inner);
+    let (mut outer, mut inner) = (Vec::new(), Vec::new());
     let mut rows: Vec<Row<'_>> = Vec::new();
+    let mut progress = Progress::new("seasons");
+    for piece in pieces(span) {
+        outer.extend(outer_seasons(&sky, subject, piece, &viewpoints)?);
+        inner.extend(inner_seasons(&sky, subject, piece, &viewpoints)?);
+        progress.at((piece.to.days() - span.from.days()) / span.days());
+    }
+    drop(progress);
     let columns = if subject.is_outer_planet() {
-        outer = outer_seasons(&sky, subject, span, &viewpoints)?;
         for season in &outer {
             for (view, here) in viewpoints.iter().zip(&season.here) {
                 measures.push(Measures::from((season, here, span.from)));
@@ -200,7 +207,6 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
         }
         OUTER_SEASON_COLUMNS
     } else {
-        inner = inner_seasons(&sky, subject, span, &viewpoints)?;
         for season in &inner {
             for (view, here) in viewpoints.iter().zip(&season.here) {
                 measures.push(Measures::from((season, here, span.from)));
@@ -236,4 +242,23 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     }
     table.finish()?;
     Ok(())
+}
+
+/// Pieces of at most twenty years that follow each other without a gap, so that long spans can show how far they are.
+fn pieces(span: Span) -> Vec<Span> {
+    const PIECE_DAYS: f64 = 7_305.0;
+    let count = (span.days() / PIECE_DAYS).ceil().max(1.0) as u32;
+    let bound = |k: u32| {
+        if k == count {
+            span.to
+        } else {
+            span.from.plus_days(f64::from(k) * PIECE_DAYS)
+        }
+    };
+    (0..count)
+        .map(|k| Span {
+            from: bound(k),
+            to: bound(k + 1),
+        })
+        .collect()
 }

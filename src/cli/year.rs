@@ -39,7 +39,7 @@ pub struct Options {
     #[arg(long, value_name = "DATE", allow_hyphen_values = true)]
     from: String,
     /// How many days from there.
-    #[arg(long, value_name = "N", default_value_t = 365, value_parser = clap::value_parser!(u32).range(1..=7_320))]
+    #[arg(long, value_name = "N", default_value_t = 365, value_parser = clap::value_parser!(u32).range(1..=3_660))]
     days: u32,
     /// Another least altitude than the scenario's, degrees.
     #[arg(long, value_name = "DEG")]
