@@ -405,6 +405,30 @@ fn frames_place_every_date() {
     }
 }
 
+/// Celestial north lies below the pole for a southern observer facing the ecliptic: the picture is turned so that most
+/// dates stand the right way up. Common practice, no source.
+#[test]
+fn pictures_stand_upright_north_and_south() {
+    for (name, today, _) in SHIPPED {
+        let csv = done(&["frame", &shipped(name), "--today", today, "--format", "csv"]);
+        let lean = column(&csv, "tilt_to_horizon_deg");
+        let held = column(&csv, "lens");
+        let mut lenses: std::collections::BTreeMap<String, (usize, usize)> = Default::default();
+        for row in rows(&csv) {
+            let count = lenses.entry(row[held].clone()).or_default();
+            count.1 += 1;
+            count.0 += usize::from(row[lean].parse::<f64>().unwrap().abs() > 90.0);
+        }
+        assert!(!lenses.is_empty(), "{name}");
+        for (lens, (on_its_head, all)) in lenses {
+            assert!(
+                on_its_head * 2 <= all,
+                "{name} {lens}: {on_its_head} of {all} dates on their heads"
+            );
+        }
+    }
+}
+
 #[test]
 fn a_named_star_is_held_or_refused() {
     let path = shipped("mars-loop-2026");

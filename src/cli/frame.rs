@@ -137,6 +137,25 @@ struct View<'a> {
     pictures: Option<(usize, usize)>,
 }
 
+impl View<'_> {
+    /// Turned by half a turn where the picture would stand on its head over most dates, as celestial north up does at
+    /// southern sites: the same piece of sky, the right way up.
+    fn upright(mut self, dots: &[Dot]) -> Result<Self, CliError> {
+        let on_its_head = dots
+            .iter()
+            .filter(|dot| lean(&self, dot).abs() > Angle::QUARTER_TURN)
+            .count();
+        if on_its_head * 2 > dots.len() {
+            let rectangle = self.frame.rectangle();
+            let tilt = (rectangle.tilt() + Angle::HALF_TURN).signed();
+            let Camera { lens, sensor } = self.camera;
+            self.frame =
+                PhotoFrame::new(rectangle.centre(), tilt, lens, sensor).map_err(frame_failed)?;
+        }
+        Ok(self)
+    }
+}
+
 pub(super) fn run(options: &Options) -> Result<(), CliError> {
     let plan = plan(&options.scenario)?;
     let scenario = &plan.scenario;
@@ -163,7 +182,7 @@ pub(super) fn run(options: &Options) -> Result<(), CliError> {
     let views = scenario
         .lenses
         .iter()
-        .map(|camera| view(camera, &path_only, &stars, &wanted, margin))
+        .map(|camera| view(camera, &path_only, &stars, &wanted, margin)?.upright(&dots))
         .collect::<Result<Vec<_>, CliError>>()?;
     match options.format {
         PageFormat::Words => {
