@@ -1,7 +1,6 @@
 //! What is handed out: charts and tables as files, and the brief. A scene becomes SVG or PNG; both look alike.
 
 mod brief;
-mod font_subset;
 mod png;
 mod season_sheet;
 pub mod season_tables;

@@ -1,19 +1,21 @@
-//! A scene as SVG 1.1 text, in points, with what it uses of the fonts inside.
+//! A scene as SVG 1.1 text, in points, its letters as outlines.
 //!
-//! Source of the format: W3C Recommendation "Scalable Vector Graphics (SVG) 1.1"; base64 of RFC 4648.
+//! Many readers of SVG ignore fonts that travel inside a file and put wider ones in their place, so that words run into
+//! each other. Outlines look the same everywhere; each label's group carries its words for screen readers and searches.
+//!
+//! Source of the format: W3C Recommendation "Scalable Vector Graphics (SVG) 1.1".
 
-use std::borrow::Cow;
-use std::collections::{BTreeMap, BTreeSet};
+use std::collections::BTreeSet;
 use std::fmt::Write;
 
-use super::font_subset;
+use ttf_parser::{GlyphId, OutlineBuilder};
+
 use crate::chart::{
     self, Font, Label, Layer, Paint, Palette, Point, Rgb, Role, Run, Scene, Shape, Stroke,
 };
 
 /// Draws a scene. The same scene and palette give the same bytes.
 ///
-/// The fonts travel inside the file; a reader that ignores embedded fonts falls back to its own sans and serif.
 /// The scene's title and description stand in it for screen readers.
 #[must_use]
 pub fn svg(scene: &Scene, palette: &Palette) -> String {
@@ -21,6 +23,7 @@ pub fn svg(scene: &Scene, palette: &Palette) -> String {
         text: String::new(),
         palette,
         gradients: 0,
+        letters: BTreeSet::new(),
     };
     out.scene(scene);
     out.text
@@ -30,6 +33,8 @@ struct Writer<'a> {
     text: String,
     palette: &'a Palette,
     gradients: usize,
+    /// Glyphs with an outline, which are defined at the head; spaces have none.
+    letters: BTreeSet<(Font, u16)>,
 }
 
 /// Writing into a `String` cannot fail, so that the result of `write!` says nothing.
@@ -64,36 +69,74 @@ fn escaped(text: &str) -> String {
     out
 }
 
-fn base64(data: &[u8]) -> String {
-    const ALPHABET: &[u8; 64] = b"ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789+/";
-    let mut out = String::with_capacity(data.len().div_ceil(3) * 4);
-    for chunk in data.chunks(3) {
-        let byte = |index: usize| u32::from(chunk.get(index).copied().unwrap_or(0));
-        let bits = byte(0) << 16 | byte(1) << 8 | byte(2);
-        for place in 0..4 {
-            if place <= chunk.len() {
-                // In bounds: six bits number 64 letters.
-                out.push(char::from(
-                    ALPHABET[(bits >> (18 - 6 * place) & 63) as usize],
-                ));
-            } else {
-                out.push('=');
-            }
-        }
-    }
-    out
+/// Units of a glyph's outline in the size of the text.
+const UNITS: f64 = 1000.0;
+
+/// The glyphs that the labels of a scene use.
+fn glyphs_of(scene: &Scene) -> BTreeSet<(Font, u16)> {
+    let labels = scene.labels().map(|(_, label)| label);
+    labels
+        .flat_map(|label| {
+            label
+                .text
+                .chars()
+                .map(|character| chart::glyph(label.font, character))
+        })
+        .map(|glyph| (glyph.font, glyph.id.0))
+        .collect()
 }
 
-/// The glyphs that the labels of a scene use, by font.
-fn glyphs_of(scene: &Scene) -> BTreeMap<Font, BTreeSet<u16>> {
-    let mut used: BTreeMap<Font, BTreeSet<u16>> = BTreeMap::new();
-    for (_, label) in scene.labels() {
-        for character in label.text.chars() {
-            let glyph = chart::glyph(label.font, character);
-            used.entry(glyph.font).or_default().insert(glyph.id.0);
+/// Writes a glyph's outline as path data, in [`UNITS`] to the size, y down.
+struct Outline {
+    data: String,
+    scale: f64,
+}
+
+impl Outline {
+    fn put(&mut self, command: char, points: &[(f32, f32)]) {
+        self.data.push(command);
+        for (index, &(x, y)) in points.iter().enumerate() {
+            let to = |value: f32| (f64::from(value) * self.scale).round();
+            let gap = if index == 0 { "" } else { " " };
+            // Minus zero would be written with its sign.
+            let _ = write!(self.data, "{gap}{} {}", to(x) + 0.0, to(-y) + 0.0);
         }
     }
-    used
+}
+
+impl OutlineBuilder for Outline {
+    fn move_to(&mut self, x: f32, y: f32) {
+        self.put('M', &[(x, y)]);
+    }
+
+    fn line_to(&mut self, x: f32, y: f32) {
+        self.put('L', &[(x, y)]);
+    }
+
+    fn quad_to(&mut self, x1: f32, y1: f32, x: f32, y: f32) {
+        self.put('Q', &[(x1, y1), (x, y)]);
+    }
+
+    fn curve_to(&mut self, x1: f32, y1: f32, x2: f32, y2: f32, x: f32, y: f32) {
+        self.put('C', &[(x1, y1), (x2, y2), (x, y)]);
+    }
+
+    fn close(&mut self) {
+        self.data.push('Z');
+    }
+}
+
+/// Path data of a glyph; empty for a space.
+fn outline(font: Font, id: u16) -> String {
+    let Some(face) = font.face() else {
+        return String::new();
+    };
+    let mut outline = Outline {
+        data: String::new(),
+        scale: UNITS / f64::from(face.units_per_em()),
+    };
+    face.outline_glyph(GlyphId(id), &mut outline);
+    outline.data
 }
 
 impl Writer<'_> {
@@ -102,44 +145,21 @@ impl Writer<'_> {
         put!(
             self,
             "<?xml version=\"1.0\" encoding=\"UTF-8\"?>\n<svg xmlns=\"http://www.w3.org/2000/svg\" \
+             xmlns:xlink=\"http://www.w3.org/1999/xlink\" \
              width=\"{width}pt\" height=\"{height}pt\" viewBox=\"0 0 {width} {height}\" role=\"img\" \
              aria-labelledby=\"title desc\">\n<title id=\"title\">{}</title>\n<desc id=\"desc\">{}</desc>\n",
             escaped(&scene.title),
             escaped(&scene.description),
         );
-        put!(self, "<style>\n");
-        for (font, glyphs) in glyphs_of(scene) {
-            let file = font_subset::subset(font.data(), &glyphs)
-                .map_or(Cow::Borrowed(font.data()), Cow::Owned);
-            put!(
-                self,
-                "@font-face {{ font-family: \"{}\"; src: url(\"data:font/ttf;base64,{}\") format(\"truetype\"); }}\n",
-                font.family(),
-                base64(&file)
-            );
+        put!(self, "<defs>\n");
+        for (font, id) in glyphs_of(scene) {
+            let data = outline(font, id);
+            if !data.is_empty() {
+                put!(self, "<path id=\"{}-{id}\" d=\"{data}\"/>\n", font.word());
+                self.letters.insert((font, id));
+            }
         }
-        // No kerning and no ligatures: the widths are those that the labels were placed by.
-        put!(
-            self,
-            "text {{ font-kerning: none; font-variant-ligatures: none; white-space: pre; }}\n"
-        );
-        for font in Font::ALL {
-            let general = match font {
-                Font::SerifItalic => "serif",
-                _ => "sans-serif",
-            };
-            let others: Vec<String> = std::iter::once(font)
-                .chain(Font::ALL.into_iter().filter(|other| *other != font))
-                .map(|family| format!("\"{}\"", family.family()))
-                .collect();
-            put!(
-                self,
-                ".{} {{ font-family: {}, {general}; }}\n",
-                font.word(),
-                others.join(", ")
-            );
-        }
-        put!(self, "</style>\n");
+        put!(self, "</defs>\n");
         let mut open: Option<Layer> = None;
         for mark in &scene.marks {
             if open != Some(mark.layer) {
@@ -307,57 +327,59 @@ impl Writer<'_> {
 
     fn label(&mut self, label: &Label, halo: bool) {
         let start = label.start();
-        put!(
-            self,
-            "<text class=\"{}\" x=\"{}\" y=\"{}\" font-size=\"{}\"",
-            label.font.word(),
-            n(start.x),
-            n(start.y),
-            n(label.size)
-        );
-        if label.spacing != 0.0 {
-            put!(self, " letter-spacing=\"{}\"", n(label.spacing));
-        }
+        let scale = label.size / UNITS;
+        put!(self, "<g transform=\"");
         if label.rotation_degrees != 0.0 {
             put!(
                 self,
-                " transform=\"rotate({} {} {})\"",
+                "rotate({} {} {}) ",
                 n(label.rotation_degrees),
                 n(label.anchor.x),
                 n(label.anchor.y)
             );
         }
+        put!(
+            self,
+            "translate({} {}) scale({scale:.6})\"",
+            n(start.x),
+            n(start.y)
+        );
         if halo {
-            let plate = Stroke::of(Role::Plate, 2.0 * label.halo);
+            let mut plate = Stroke::of(Role::Plate, 2.0 * label.halo);
+            plate.width /= scale;
             self.fill(&plate.paint);
             self.stroke(&plate);
             put!(self, " stroke-linejoin=\"round\" aria-hidden=\"true\"");
         } else {
             self.fill(&label.paint);
+            put!(
+                self,
+                " role=\"img\" aria-label=\"{}\"",
+                escaped(&label.text)
+            );
         }
-        put!(self, ">{}</text>\n", escaped(&label.text));
+        put!(self, ">");
+        let mut x = 0.0;
+        for character in label.text.chars() {
+            let glyph = chart::glyph(label.font, character);
+            if self.letters.contains(&(glyph.font, glyph.id.0)) {
+                put!(
+                    self,
+                    "<use xlink:href=\"#{}-{}\" x=\"{}\"/>",
+                    glyph.font.word(),
+                    glyph.id.0,
+                    n(x)
+                );
+            }
+            x += glyph.advance * UNITS + label.spacing / scale;
+        }
+        put!(self, "</g>\n");
     }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    /// Test vectors of RFC 4648, section 10.
-    #[test]
-    fn base64_agrees_with_its_standard() {
-        for (plain, coded) in [
-            ("", ""),
-            ("f", "Zg=="),
-            ("fo", "Zm8="),
-            ("foo", "Zm9v"),
-            ("foob", "Zm9vYg=="),
-            ("fooba", "Zm9vYmE="),
-            ("foobar", "Zm9vYmFy"),
-        ] {
-            assert_eq!(base64(plain.as_bytes()), coded);
-        }
-    }
 
     #[test]
     fn markup_in_a_title_stays_text() {
