@@ -25,9 +25,15 @@ pub fn strip_text(plan: &Plan) -> StripText {
             .events
             .iter()
             .map(|event| {
-                clock
-                    .date(event.instant)
-                    .map_or_else(String::new, short_date)
+                clock.date(event.instant).map_or_else(String::new, |date| {
+                    // A season of several years has the same days again.
+                    let day = short_date(date);
+                    if season.span.days() < LONG_DAYS {
+                        day
+                    } else {
+                        format!("{day} {}", year_words(date.year()))
+                    }
+                })
             })
             .collect(),
         cautions: season_cautions(plan),
@@ -85,6 +91,9 @@ fn span_words(plan: &Plan) -> String {
     }
 }
 
+/// From this length on a season spans several years and its dates say which, days.
+const LONG_DAYS: f64 = 420.0;
+
 /// Days of the month that carry a label, that carry a tick, and how that is said.
 const SHORT_SEASON: (&[u8], &[u8], &str) =
     (&[5, 9, 13, 17, 21, 25, 29], &[], "a tick every 4 days");
@@ -97,7 +106,7 @@ fn dates(plan: &Plan) -> (Vec<StripDate>, &'static str) {
     let days = season.span.days();
     let (labelled, ticked, spacing) = match days {
         days if days < 120.0 => SHORT_SEASON,
-        days if days < 420.0 => USUAL_SEASON,
+        days if days < LONG_DAYS => USUAL_SEASON,
         _ => LONG_SEASON,
     };
     let clock = LocalClock {
@@ -116,7 +125,9 @@ fn dates(plan: &Plan) -> (Vec<StripDate>, &'static str) {
             break;
         }
         let rank = match date.day() {
-            1 if days < 420.0 || matches!(date.month(), 1 | 4 | 7 | 10) => Some(DateRank::Month),
+            1 if days < LONG_DAYS || matches!(date.month(), 1 | 4 | 7 | 10) => {
+                Some(DateRank::Month)
+            }
             1 => Some(DateRank::Day),
             day if labelled.contains(&day) => Some(DateRank::Day),
             day if ticked.contains(&day) => Some(DateRank::Fine),
@@ -130,7 +141,7 @@ fn dates(plan: &Plan) -> (Vec<StripDate>, &'static str) {
                     // The year stands once, where it begins; the season's first date has it in the title block.
                     let new_year = year_shown.is_some();
                     year_shown = Some(date.year());
-                    let words = if days < 420.0 {
+                    let words = if days < LONG_DAYS {
                         short_date(date)
                     } else {
                         short_month(date).to_owned()
@@ -141,7 +152,7 @@ fn dates(plan: &Plan) -> (Vec<StripDate>, &'static str) {
                         words
                     }
                 }
-                (DateRank::Month, _) if days < 420.0 => short_date(date),
+                (DateRank::Month, _) if days < LONG_DAYS => short_date(date),
                 (DateRank::Month, _) | (DateRank::Day, 1) => short_month(date).to_owned(),
                 (DateRank::Day, day) => day.to_string(),
                 (DateRank::Fine, _) => String::new(),
